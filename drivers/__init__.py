@@ -1,0 +1,1 @@
+"""Descriptions of instruments, as data."""
