@@ -1,0 +1,230 @@
+"""Coverage intervals within physics.
+
+Three ways, by what the quantity asks for: the exact distribution of the linear error where
+nothing is in the way; draws restricted to the physical region where one of its limits is
+within reach; the profile of chi-square where the quantity is not linear in the data over
+its own uncertainty (a coupling near zero seen only by its square).
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+from scipy.linalg import solve_triangular
+from scipy.special import ndtri
+
+from mutual.distribution import shortest_of_draws
+from mutual.engine import Fit, Pin, Problem, fit
+from mutual.physics import Region
+from mutual.posterior import NEAR, Contributions, Posterior
+from mutual.quantities import Measure
+
+Real = NDArray[np.float64]
+
+_STRAIGHT = (0.75, 1.33)
+# A crossing of the profile is near enough when the root of its rise is right to this part.
+_CLOSE = 3e-3
+# A coupling that the data do not keep below this is taken for not determined.
+_HARDLY_BOUNDED = 0.9
+
+
+@dataclass(frozen=True)
+class Interval:
+    """Bounds of one quantity.
+
+    Attributes
+    ----------
+    value, lower, upper : float
+    standard : float or None
+        Standard uncertainty.
+    at_lower, at_upper : bool
+        Whether the region ends at what physics allows on that side.
+    parts : Contributions or None
+        For the budget.
+    """
+
+    value: float
+    lower: float
+    upper: float
+    standard: float | None
+    at_lower: bool = False
+    at_upper: bool = False
+    parts: Contributions | None = None
+
+
+class Bounds:
+    """Intervals of the quantities of one fit.
+
+    Parameters
+    ----------
+    problem : Problem
+    free : Fit
+        Unconstrained minimum.
+    best : Fit
+        Minimum within the physical region.
+    region : Region
+    coverage : float
+    """
+
+    def __init__(self, problem: Problem, free: Fit, best: Fit, region: Region, coverage: float) -> None:
+        self.problem, self.free, self.best, self.region, self.coverage = problem, free, best, region, coverage
+        self.posterior = Posterior(problem, free, region)
+
+    def interval(self, measure: Measure, flat: bool = True) -> Interval | None:
+        """Interval of a quantity, of its magnitude where people ask for that; None where it is not determined.
+
+        `flat` allows for a coupling that chi-square bounds although it has no slope there.
+        """
+        gradient = measure.gradient(self.free.theta)
+        if not self.posterior.determined(gradient):
+            return self._where_flat(measure) if flat else None
+        parts = self.posterior.contributions(gradient)
+        standard = float(np.sqrt(parts.variance))
+        if not self._straight(measure, gradient, standard):
+            return self._profile(measure, standard, parts)
+        if self.posterior.limited(parts) and self.posterior.draws is not None:
+            return self._from_draws(measure, parts)
+        return self._exact(measure, parts)
+
+    def signed(self, measure: Measure) -> Interval | None:
+        """Interval with its sign, no folding."""
+        plain = Measure(measure.name, measure.kind, measure.positions, (-measure.limits[1], measure.limits[1]))
+        return self.interval(plain)
+
+    def _value(self, measure: Measure) -> float:
+        value = float(measure.value(self.best.theta))
+        if measure.folded:
+            value = abs(value)
+        return float(np.clip(value, *measure.limits))
+
+    def _exact(self, measure: Measure, parts: Contributions) -> Interval:
+        spread = self.posterior.spread(parts)
+        widening = self.posterior.widening(parts, self.coverage)
+        centre, value = float(measure.value(self.free.theta)), self._value(measure)
+        if measure.folded and abs(centre) < NEAR * spread.standard * widening:
+            wide = type(spread)(spread.sigma * widening, spread.halves * widening)
+            lower, upper = wide.folded(centre, self.coverage, measure.limits[1])
+        else:
+            half = spread.half_width(self.coverage) * widening
+            middle = abs(centre) if measure.folded else centre
+            lower, upper = middle - half, middle + half
+        return self._clipped(measure, value, lower, upper, spread.standard, parts)
+
+    def _from_draws(self, measure: Measure, parts: Contributions) -> Interval:
+        assert self.posterior.draws is not None
+        values = measure.value(self.posterior.draws)
+        if measure.folded:
+            values = np.abs(values)
+        widening = self.posterior.widening(parts, self.coverage)
+        lower, upper, first, last = shortest_of_draws(values, self.coverage)
+        value = self._value(measure)
+        lower, upper = value - (value - lower) * widening, value + (upper - value) * widening
+        least, most = measure.limits
+        if first and least > -np.inf and lower - least < 0.02 * (upper - lower):
+            lower = least
+        if last and most < np.inf and most - upper < 0.02 * (upper - lower):
+            upper = most
+        return self._clipped(measure, value, lower, upper, float(np.sqrt(parts.variance)), parts)
+
+    def _clipped(
+        self, measure: Measure, value: float, lower: float, upper: float, standard: float, parts: Contributions
+    ) -> Interval:
+        least, most = measure.limits
+        if measure.folded:
+            least = max(least, 0.0)
+        lower, upper = min(max(lower, least), value), max(min(upper, most), value)
+        return Interval(value, lower, upper, standard, lower <= least, upper >= most, parts)
+
+    def _straight(self, measure: Measure, gradient: Real, standard: float) -> bool:
+        """Whether chi-square grows by 4 within two standard uncertainties, as it does for a linear model."""
+        if standard == 0 or self.problem.body.linear:
+            return True
+        direction = self._direction(gradient) / standard
+        for side in (2.0, -2.0):
+            theta = self.free.theta + side * direction
+            r = self.free.prediction.values - self.problem.body.predict(self.problem.unknowns, theta).values
+            white = solve_triangular(self.free.whitener, r, lower=True, check_finite=False)
+            if not _STRAIGHT[0] < float(white @ white) / 4 < _STRAIGHT[1]:
+                return False
+        return True
+
+    def _direction(self, gradient: Real) -> Real:
+        """Covariance times gradient: how the unknowns move when the quantity does, (P,)."""
+        f, scale = self.free, self.problem.unknowns.scale[self.free.free]
+        out = np.zeros(len(f.theta))
+        out[f.free] = scale * (f.vt.T @ ((f.vt @ (gradient[f.free] * scale)) / f.s**2))
+        return out
+
+    def _where_flat(self, measure: Measure) -> Interval | None:
+        """A coupling at zero seen only by its square has no slope there, yet it is bounded."""
+        if measure.kind != "coupling" or abs(float(measure.value(self.best.theta))) > 0.2:
+            return None
+        sign = -1.0 if float(measure.value(self.best.theta)) < 0 else 1.0
+        pin = Pin(measure, sign * _HARDLY_BOUNDED, 1e-4)
+        pinned = fit(self.problem, self.best.theta, self.region, pin, steps=25)
+        if pinned.chi_square - self.best.chi_square < float(ndtri((1 + self.coverage) / 2)) ** 2:
+            return None
+        high = self._crossing(measure, 0.0, 0.05, 1.0)
+        if high is None:
+            return None
+        low = 0.0
+        return Interval(self._value(measure), low, high, high / 2, True, False, None)
+
+    def _profile(self, measure: Measure, standard: float, parts: Contributions) -> Interval | None:
+        value = self._value(measure)
+        least, most = measure.limits if not measure.folded else (0.0, measure.limits[1])
+        step = max(standard, 1e-9 * abs(value))
+        upper = self._crossing(measure, value, step, most)
+        lower = self._crossing(measure, value, -step, least)
+        if upper is None and lower is None:
+            return None
+        low = least if lower is None else lower
+        high = most if upper is None else upper
+        if not (np.isfinite(low) and np.isfinite(high)):
+            return None
+        half = (high - low) / 2 / float(ndtri((1 + self.coverage) / 2))
+        return Interval(value, low, high, min(standard, half), lower is None, upper is None, parts)
+
+    def _crossing(self, measure: Measure, value: float, step: float, limit: float) -> float | None:
+        """Where the profile of chi-square crosses its quantile; None where it never does before the limit.
+
+        The root of the rise is nearly linear in the quantity, so a secant finds the crossing in a few fits.
+        """
+        wanted = float(ndtri((1 + self.coverage) / 2))
+        sign = -1.0 if float(measure.value(self.best.theta)) < 0 and measure.folded else 1.0
+        theta = self.best.theta
+
+        def root_of_rise(at: float) -> float:
+            nonlocal theta
+            pin = Pin(measure, sign * at, 1e-4 * abs(step))
+            pinned = fit(self.problem, theta, self.region, pin, steps=25)
+            theta = pinned.theta
+            return float(np.sqrt(max(pinned.chi_square - self.best.chi_square, 0.0)))
+
+        near, low, far = value, 0.0, value + 2 * step
+        for _ in range(30):
+            beyond = (far - limit) * np.sign(step) >= 0
+            far = limit if beyond else far
+            high = root_of_rise(far)
+            if high >= wanted:
+                break
+            if beyond:
+                return None
+            near, low = far, high
+            far = value + (far - value) * float(np.clip(1.1 * wanted / max(high, 1e-9), 1.5, 4.0))
+        else:
+            return None
+        middle = far
+        for _ in range(12):
+            part = float(np.clip((wanted - low) / (high - low), 0.05, 0.95))
+            middle = near + (far - near) * part
+            rise = root_of_rise(middle)
+            if abs(rise - wanted) < _CLOSE * wanted:
+                break
+            if rise > wanted:
+                far, high = middle, rise
+            else:
+                near, low = middle, rise
+        return middle

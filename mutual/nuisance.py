@@ -1,0 +1,134 @@
+"""What the data leave open of the losses, and how the bounds enclose it.
+
+Two nuisances: losses that two windings share (mutual resistance Rm), bounded by the
+resistances where the data do not determine it; and the resistance of a winding of which nothing
+was read, which may be anything from zero upward. The value reported has the least of either; the
+bounds are the union over the extremes.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from numpy.typing import NDArray
+
+from mutual.engine import Fit, Problem
+from mutual.evidence import Body, Evidence, Hints, Prediction, Source
+from mutual.physics import Region
+from mutual.posterior import Posterior
+from mutual.unknowns import Unknowns
+
+Real = NDArray[np.float64]
+
+_WIDTH = 1e-6
+
+
+@dataclass(frozen=True)
+class Shared:
+    """One mutual resistance that the data leave open.
+
+    Attributes
+    ----------
+    state, i, j : int
+        Set of resistances and windings.
+    most : float or None
+        Bound in ohm where the losses above direct current are known (Rm^2 <= dR1 dR2), else None:
+        the fraction of sqrt(R1 R2) holds.
+    """
+
+    state: int
+    i: int
+    j: int
+    most: float | None
+
+
+class SharedLossAt:
+    """Evidence that a mutual resistance has a given part of its bound: the corner of a nuisance, not a reading."""
+
+    def __init__(self, shared: Shared, part: float) -> None:
+        self._shared, self._part = shared, part
+        self.values: Real = np.zeros(1)
+        self.noise: Real = np.full(1, _WIDTH)
+        self.freedom: Real = np.full(1, np.inf)
+        self.rounding: Real = np.zeros(1)
+        self.sources: Sequence[Source] = ()
+        self.labels: Sequence[str] = ("shared loss",)
+        self.straight = np.zeros(1, dtype=bool)
+        self.closed = False
+
+    def predict(self, unknowns: Unknowns, theta: Real) -> Prediction:
+        """Distance of Rm from its corner, relative to sqrt(R1 R2), and derivatives."""
+        s = self._shared
+        own, other, m = (unknowns.resistance(s.state, *ij) for ij in ((s.i, s.i), (s.j, s.j), (s.i, s.j)))
+        r1, r2 = (max(abs(float(theta[p])), 1e-12 * float(unknowns.scale[p])) for p in (own, other))
+        jacobian = np.zeros((1, unknowns.size))
+        root = float(np.sqrt(r1 * r2))
+        if s.most is not None:
+            scale = float(unknowns.scale[m])
+            jacobian[0, m] = 1 / scale
+            return Prediction(np.array([(theta[m] - self._part * s.most) / scale]), jacobian, np.zeros((1, 0)))
+        ratio = float(theta[m]) / root
+        jacobian[0, [own, other, m]] = [-ratio / 2 / r1, -ratio / 2 / r2, 1 / root]
+        return Prediction(np.array([ratio - self._part]), jacobian, np.zeros((1, 0)))
+
+    def hints(self) -> Hints:
+        """It has none.
+
+        Raises
+        ------
+        NotImplementedError
+        """
+        raise NotImplementedError
+
+
+def open_shared(problem: Problem, fit: Fit) -> list[tuple[int, int, int]]:
+    """Mutual resistances (state, i, j) that the data do not tell from the bounds of a passive device.
+
+    One counts as determined when its standard uncertainty is below sqrt(R1 R2), what physics allows it anyway.
+    """
+    u = problem.unknowns
+    posterior = Posterior(problem, fit, Region(u))
+    found = []
+    for f in range(len(u.omegas)):
+        for i in range(u.windings):
+            for j in range(i + 1, u.windings):
+                m = u.resistance(f, i, j)
+                if problem.held[m]:
+                    continue
+                gradient = np.zeros(u.size)
+                gradient[m] = 1.0
+                r1, r2 = (float(fit.theta[u.resistance(f, k, k)]) for k in (i, j))
+                root = np.sqrt(max(r1 * r2, 0.0))
+                sure = posterior.determined(gradient)
+                if not sure or posterior.contributions(gradient).variance > root**2:
+                    found.append((f, i, j))
+    return found
+
+
+def bounded(problem: Problem, fit: Fit, where: tuple[int, int, int]) -> Shared:
+    """The bound of an open mutual resistance, from the losses above direct current where those are known."""
+    f, i, j = where
+    u = problem.unknowns
+    if 0.0 not in u.omegas:
+        return Shared(f, i, j, None)
+    direct = u.omegas.index(0.0)
+    posterior = Posterior(problem, fit, Region(u))
+    excess = []
+    for k in (i, j):
+        gradient = np.zeros(u.size)
+        gradient[u.resistance(f, k, k)], gradient[u.resistance(direct, k, k)] = 1.0, -1.0
+        if not u.read[direct][k] or not posterior.determined(gradient):
+            return Shared(f, i, j, None)
+        spread = np.sqrt(posterior.contributions(gradient).variance)
+        excess.append(max(float(gradient @ fit.theta), 0.0) + 2 * spread)
+    return Shared(f, i, j, float(np.sqrt(excess[0] * excess[1])))
+
+
+def at_corner(problem: Problem, shared: Shared, part: float) -> Problem:
+    """The problem with one mutual resistance at a part (-1..1 of its bound, or of sqrt(R1 R2))."""
+    held = problem.held.copy()
+    held[problem.unknowns.resistance(shared.state, shared.i, shared.j)] = False
+    pieces: tuple[Evidence, ...] = (*problem.body.pieces, SharedLossAt(shared, part))
+    return Problem(Body(pieces), problem.unknowns, held)

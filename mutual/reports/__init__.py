@@ -1,0 +1,1 @@
+"""An `Estimate` made readable."""
