@@ -16,7 +16,7 @@ from scipy.linalg import solve_triangular
 from scipy.special import ndtri
 
 from mutual.distribution import shortest_of_draws
-from mutual.engine import Fit, Pin, Problem, fit
+from mutual.engine import OPEN_ABOVE, Fit, Pin, Problem, fit
 from mutual.physics import Region
 from mutual.posterior import NEAR, Contributions, Posterior
 from mutual.quantities import Measure
@@ -28,6 +28,7 @@ _STRAIGHT = (0.75, 1.33)
 _CLOSE = 3e-3
 # A coupling that the data do not keep below this is taken for not determined.
 _HARDLY_BOUNDED = 0.9
+_OPEN_STEP = 0.01
 
 
 @dataclass(frozen=True)
@@ -79,7 +80,7 @@ class Bounds:
         """
         gradient = measure.gradient(self.free.theta)
         if not self.posterior.determined(gradient):
-            return self._where_flat(measure) if flat else None
+            return self._where_open(measure) if flat else None
         parts = self.posterior.contributions(gradient)
         standard = float(np.sqrt(parts.variance))
         if not self._straight(measure, gradient, standard):
@@ -157,10 +158,32 @@ class Bounds:
         out[f.free] = scale * (f.vt.T @ ((f.vt @ (gradient[f.free] * scale)) / f.s**2))
         return out
 
+    def _where_open(self, measure: Measure) -> Interval | None:
+        """Chi-square may bound a coupling that has no linear estimate.
+
+        Either it is at zero and seen only by its square, or something that bears on it (how a loss splits between
+        windings) is open, but limited by physics.
+        """
+        if measure.kind != "coupling" or not self._seen(measure.positions[2]):
+            return None
+        if not self._slopes(measure.positions[2]):
+            return self._where_flat(measure)
+        return self._profile(measure, _OPEN_STEP, None)
+
+    def _seen(self, position: int) -> bool:
+        """Whether an unknown bears on the data away from where its slope may vanish."""
+        theta = self.best.theta.copy()
+        theta[position] = 0.5 * self.problem.unknowns.scale[position]
+        jacobian = self.problem.body.predict(self.problem.unknowns, theta).jacobian[:, position]
+        return bool(np.any(jacobian != 0))
+
+    def _slopes(self, position: int) -> bool:
+        """Whether chi-square has a slope by an unknown at the minimum."""
+        where = np.flatnonzero(self.free.free == position)
+        return bool(where.size) and float(np.linalg.norm(self.free.jacobian[:, where[0]])) > 3 / OPEN_ABOVE
+
     def _where_flat(self, measure: Measure) -> Interval | None:
         """A coupling at zero seen only by its square has no slope there, yet it is bounded."""
-        if measure.kind != "coupling" or abs(float(measure.value(self.best.theta))) > 0.2:
-            return None
         sign = -1.0 if float(measure.value(self.best.theta)) < 0 else 1.0
         pin = Pin(measure, sign * _HARDLY_BOUNDED, 1e-4)
         pinned = fit(self.problem, self.best.theta, self.region, pin, steps=25)
@@ -170,9 +193,10 @@ class Bounds:
         if high is None:
             return None
         low = 0.0
-        return Interval(self._value(measure), low, high, high / 2, True, False, None)
+        value = min(self._value(measure), high)
+        return Interval(value, low, high, high / float(ndtri((1 + self.coverage) / 2)), True, False, None)
 
-    def _profile(self, measure: Measure, standard: float, parts: Contributions) -> Interval | None:
+    def _profile(self, measure: Measure, standard: float, parts: Contributions | None) -> Interval | None:
         value = self._value(measure)
         least, most = measure.limits if not measure.folded else (0.0, measure.limits[1])
         step = max(standard, 1e-9 * abs(value))
@@ -185,7 +209,8 @@ class Bounds:
         if not (np.isfinite(low) and np.isfinite(high)):
             return None
         half = (high - low) / 2 / float(ndtri((1 + self.coverage) / 2))
-        return Interval(value, low, high, min(standard, half), lower is None, upper is None, parts)
+        known = half if parts is None else min(standard, half)
+        return Interval(value, low, high, known, lower is None, upper is None, parts)
 
     def _crossing(self, measure: Measure, value: float, step: float, limit: float) -> float | None:
         """Where the profile of chi-square crosses its quantile; None where it never does before the limit.
