@@ -26,6 +26,7 @@ Real = NDArray[np.float64]
 _STRAIGHT = (0.75, 1.33)
 # A crossing of the profile is near enough when the root of its rise is right to this part.
 _CLOSE = 3e-3
+_SOFT = 0.03
 # A coupling that the data do not keep below this is taken for not determined.
 _HARDLY_BOUNDED = 0.9
 _OPEN_STEP = 0.01
@@ -83,11 +84,19 @@ class Bounds:
             return self._where_open(measure) if flat else None
         parts = self.posterior.contributions(gradient)
         standard = float(np.sqrt(parts.variance))
-        if not self._straight(measure, gradient, standard):
+        if self._by_square(measure, standard) or not self._straight(measure, gradient, standard):
             return self._profile(measure, standard, parts)
         if self.posterior.limited(parts) and self.posterior.draws is not None:
             return self._from_draws(measure, parts)
         return self._exact(measure, parts)
+
+    def _by_square(self, measure: Measure, standard: float) -> bool:
+        """Whether a quantity is near zero and seen by its square: nothing is linear there."""
+        position = measure.positions[-1]
+        straight = self.problem.body.straight
+        if not measure.folded or bool(np.any(self.free.prediction.jacobian[straight, position] != 0)):
+            return False
+        return abs(float(measure.value(self.best.theta))) < NEAR * standard
 
     def signed(self, measure: Measure) -> Interval | None:
         """Interval with its sign, no folding."""
@@ -218,38 +227,39 @@ class Bounds:
         The root of the rise is nearly linear in the quantity, so a secant finds the crossing in a few fits.
         """
         wanted = float(ndtri((1 + self.coverage) / 2))
+        if abs(value) < NEAR * abs(step) and measure.folded:
+            # At zero coupling the other winding's loss loses its meaning: a second degree of freedom is open there.
+            wanted = float(np.sqrt(-2 * np.log(1 - self.coverage)))
         sign = -1.0 if float(measure.value(self.best.theta)) < 0 and measure.folded else 1.0
         theta = self.best.theta
 
-        def root_of_rise(at: float) -> float:
+        def profile(at: float) -> tuple[float, float]:
+            """Where the fit came to rest near `at` (a soft pin converges fast), and the root of its rise."""
             nonlocal theta
-            pin = Pin(measure, sign * at, 1e-4 * abs(step))
-            pinned = fit(self.problem, theta, self.region, pin, steps=25)
+            pinned = fit(self.problem, theta, self.region, Pin(measure, sign * at, _SOFT * abs(step)), steps=25)
             theta = pinned.theta
-            return float(np.sqrt(max(pinned.chi_square - self.best.chi_square, 0.0)))
+            rise = float(np.sqrt(max(pinned.chi_square - self.best.chi_square, 0.0)))
+            return sign * float(measure.value(theta)), rise
 
-        near, low, far = value, 0.0, value + 2 * step
+        near, low, target = value, 0.0, value + 2 * step
         for _ in range(30):
-            beyond = (far - limit) * np.sign(step) >= 0
-            far = limit if beyond else far
-            high = root_of_rise(far)
+            beyond = (target - limit) * np.sign(step) >= 0
+            far, high = profile(limit if beyond else target)
             if high >= wanted:
                 break
             if beyond:
                 return None
             near, low = far, high
-            far = value + (far - value) * float(np.clip(1.1 * wanted / max(high, 1e-9), 1.5, 4.0))
+            target = value + (target - value) * float(np.clip(1.1 * wanted / max(high, 1e-9), 1.5, 4.0))
         else:
             return None
-        middle = far
         for _ in range(12):
             part = float(np.clip((wanted - low) / (high - low), 0.05, 0.95))
-            middle = near + (far - near) * part
-            rise = root_of_rise(middle)
+            middle, rise = profile(near + (far - near) * part)
             if abs(rise - wanted) < _CLOSE * wanted:
-                break
+                return middle
             if rise > wanted:
                 far, high = middle, rise
             else:
                 near, low = middle, rise
-        return middle
+        return near + (far - near) * (wanted - low) / (high - low)

@@ -42,7 +42,9 @@ def sign_modes(explanation: Explanation, names: list[str], group: int) -> Modes:
     n = explanation.unknowns.windings
     odds, double = np.zeros((n, n)), np.zeros((n, n), dtype=bool)
     for i, j in combinations(range(n), 2):
-        here, sign = _local(explanation, names, group, i, j)
+        here = _local(explanation, names, group, i, j)
+        place = explanation.unknowns.inductance(group, i, j)
+        sign = 1.0 if float(explanation.main.best.theta[place]) >= 0 else -1.0
         other = _other_minimum(explanation, group, i, j, sign)
         value = here
         if other is not None:
@@ -59,8 +61,8 @@ def _measures(explanation: Explanation, names: list[str], group: int, i: int, j:
     yield from (found.coupling, found.mutual, *found.ratio)
 
 
-def _local(explanation: Explanation, names: list[str], group: int, i: int, j: int) -> tuple[float, float]:
-    """Log odds about the minimum found, and the sign of M there."""
+def _local(explanation: Explanation, names: list[str], group: int, i: int, j: int) -> float:
+    """Log odds of M > 0 about the minimum found."""
     posterior, theta = explanation.main.bounds.posterior, explanation.main.free.theta
     for measure in _measures(explanation, names, group, i, j):
         gradient = measure.gradient(theta)
@@ -68,13 +70,12 @@ def _local(explanation: Explanation, names: list[str], group: int, i: int, j: in
             value = float(measure.value(theta))
             spread = posterior.spread(posterior.contributions(gradient))
             upper, lower = spread.below(value), spread.below(-value)
-            odds = float(np.log(max(upper, 1e-300)) - np.log(max(lower, 1e-300)))
-            return odds, 1.0 if value >= 0 else -1.0
+            return float(np.log(max(upper, 1e-300)) - np.log(max(lower, 1e-300)))
     value = float(theta[explanation.unknowns.inductance(group, i, j)])
     column = explanation.unknowns.inductance(group, i, j)
     where = np.flatnonzero(explanation.main.free.free == column)
     bears = bool(where.size) and np.linalg.norm(explanation.main.free.jacobian[:, where[0]]) > 1e-6
-    return (_CERTAIN if value >= 0 else -_CERTAIN) if bears else 0.0, 1.0 if value >= 0 else -1.0
+    return (_CERTAIN if value >= 0 else -_CERTAIN) if bears else 0.0
 
 
 def _other_minimum(explanation: Explanation, group: int, i: int, j: int, sign: float) -> float | None:
@@ -84,7 +85,7 @@ def _other_minimum(explanation: Explanation, group: int, i: int, j: int, sign: f
         return None
     best = None
     for theta in _flipped(explanation, group, i, j):
-        found = fit(problem, theta, explanation.region)
+        found = fit(problem, theta, explanation.region, steps=25)
         if float(found.theta[explanation.unknowns.inductance(group, i, j)]) * sign < 0:
             rise = max(found.chi_square - explanation.chi_square, 0.0)
             best = rise if best is None else min(best, rise)
