@@ -16,19 +16,15 @@ from scipy.linalg import solve_triangular
 from scipy.special import ndtri
 
 from mutual.distribution import shortest_of_draws
-from mutual.engine import OPEN_ABOVE, Fit, Pin, Problem, fit
+from mutual.engine import OPEN_ABOVE, Fit, Problem
 from mutual.physics import Region
 from mutual.posterior import NEAR, Contributions, Posterior
+from mutual.profile import Profile
 from mutual.quantities import Measure
 
 Real = NDArray[np.float64]
 
 _STRAIGHT = (0.75, 1.33)
-# A crossing of the profile is near enough when the root of its rise is right to this part.
-_CLOSE = 3e-3
-_SOFT = 0.03
-# A coupling that the data do not keep below this is taken for not determined.
-_HARDLY_BOUNDED = 0.9
 _OPEN_STEP = 0.01
 
 
@@ -73,6 +69,7 @@ class Bounds:
     def __init__(self, problem: Problem, free: Fit, best: Fit, region: Region, coverage: float) -> None:
         self.problem, self.free, self.best, self.region, self.coverage = problem, free, best, region, coverage
         self.posterior = Posterior(problem, free, region)
+        self._profile = Profile(problem, best, region, coverage)
 
     def interval(self, measure: Measure, flat: bool = True) -> Interval | None:
         """Interval of a quantity, of its magnitude where people ask for that; None where it is not determined.
@@ -85,7 +82,7 @@ class Bounds:
         parts = self.posterior.contributions(gradient)
         standard = float(np.sqrt(parts.variance))
         if self._by_square(measure, standard) or not self._straight(measure, gradient, standard):
-            return self._profile(measure, standard, parts)
+            return self._from_profile(measure, standard, parts)
         if self.posterior.limited(parts) and self.posterior.draws is not None:
             return self._from_draws(measure, parts)
         return self._exact(measure, parts)
@@ -177,7 +174,7 @@ class Bounds:
             return None
         if not self._slopes(measure.positions[2]):
             return self._where_flat(measure)
-        return self._profile(measure, _OPEN_STEP, None)
+        return self._from_profile(measure, _OPEN_STEP, None)
 
     def _seen(self, position: int) -> bool:
         """Whether an unknown bears on the data away from where its slope may vanish."""
@@ -193,24 +190,18 @@ class Bounds:
 
     def _where_flat(self, measure: Measure) -> Interval | None:
         """A coupling at zero seen only by its square has no slope there, yet it is bounded."""
-        sign = -1.0 if float(measure.value(self.best.theta)) < 0 else 1.0
-        pin = Pin(measure, sign * _HARDLY_BOUNDED, 1e-4)
-        pinned = fit(self.problem, self.best.theta, self.region, pin, steps=25)
-        if pinned.chi_square - self.best.chi_square < float(ndtri((1 + self.coverage) / 2)) ** 2:
-            return None
-        high = self._crossing(measure, 0.0, 0.05, 1.0)
+        high = self._profile.of_zero(measure)
         if high is None:
             return None
-        low = 0.0
         value = min(self._value(measure), high)
-        return Interval(value, low, high, high / float(ndtri((1 + self.coverage) / 2)), True, False, None)
+        return Interval(value, 0.0, high, high / float(ndtri((1 + self.coverage) / 2)), True, False, None)
 
-    def _profile(self, measure: Measure, standard: float, parts: Contributions | None) -> Interval | None:
+    def _from_profile(self, measure: Measure, standard: float, parts: Contributions | None) -> Interval | None:
         value = self._value(measure)
         least, most = measure.limits if not measure.folded else (0.0, measure.limits[1])
         step = max(standard, 1e-9 * abs(value))
-        upper = self._crossing(measure, value, step, most)
-        lower = self._crossing(measure, value, -step, least)
+        upper = self._profile.crossing(measure, value, step, most)
+        lower = self._profile.crossing(measure, value, -step, least)
         if upper is None and lower is None:
             return None
         low = least if lower is None else lower
@@ -220,46 +211,3 @@ class Bounds:
         half = (high - low) / 2 / float(ndtri((1 + self.coverage) / 2))
         known = half if parts is None else min(standard, half)
         return Interval(value, low, high, known, lower is None, upper is None, parts)
-
-    def _crossing(self, measure: Measure, value: float, step: float, limit: float) -> float | None:
-        """Where the profile of chi-square crosses its quantile; None where it never does before the limit.
-
-        The root of the rise is nearly linear in the quantity, so a secant finds the crossing in a few fits.
-        """
-        wanted = float(ndtri((1 + self.coverage) / 2))
-        if abs(value) < NEAR * abs(step) and measure.folded:
-            # At zero coupling the other winding's loss loses its meaning: a second degree of freedom is open there.
-            wanted = float(np.sqrt(-2 * np.log(1 - self.coverage)))
-        sign = -1.0 if float(measure.value(self.best.theta)) < 0 and measure.folded else 1.0
-        theta = self.best.theta
-
-        def profile(at: float) -> tuple[float, float]:
-            """Where the fit came to rest near `at` (a soft pin converges fast), and the root of its rise."""
-            nonlocal theta
-            pinned = fit(self.problem, theta, self.region, Pin(measure, sign * at, _SOFT * abs(step)), steps=25)
-            theta = pinned.theta
-            rise = float(np.sqrt(max(pinned.chi_square - self.best.chi_square, 0.0)))
-            return sign * float(measure.value(theta)), rise
-
-        near, low, target = value, 0.0, value + 2 * step
-        for _ in range(30):
-            beyond = (target - limit) * np.sign(step) >= 0
-            far, high = profile(limit if beyond else target)
-            if high >= wanted:
-                break
-            if beyond:
-                return None
-            near, low = far, high
-            target = value + (target - value) * float(np.clip(1.1 * wanted / max(high, 1e-9), 1.5, 4.0))
-        else:
-            return None
-        for _ in range(12):
-            part = float(np.clip((wanted - low) / (high - low), 0.05, 0.95))
-            middle, rise = profile(near + (far - near) * part)
-            if abs(rise - wanted) < _CLOSE * wanted:
-                return middle
-            if rise > wanted:
-                far, high = middle, rise
-            else:
-                near, low = middle, rise
-        return near + (far - near) * (wanted - low) / (high - low)

@@ -150,5 +150,7 @@ def check_hookup(device: Device, hookup: Hookup) -> None:
         )
     if hookup.sense is not None and part[hookup.sense[0]] != part[hookup.sense[1]]:
         raise RefusedInput(
-            "no winding or tie joins the sensed leads, so their voltage is not defined", column="sense", found=str(hookup)
+            "no winding or tie joins the sensed leads, so their voltage is not defined",
+            column="sense",
+            found=str(hookup),
         )

@@ -81,7 +81,7 @@ class Spread:
 
     def half_width(self, coverage: float) -> float:
         """Half width of the interval about zero with the given coverage probability."""
-        sigma, halves = self._reduced
+        halves = self._reduced[1]
         if not len(halves):
             return float(ndtri((1 + coverage) / 2)) * self.standard
         x, f = self.table
@@ -93,7 +93,7 @@ class Spread:
         whole = self.standard
         if whole == 0:
             return float(limit > 0)
-        sigma, halves = self._reduced
+        halves = self._reduced[1]
         if not len(halves):
             return float(ndtr(limit / whole))
         x, f = self.table

@@ -187,8 +187,7 @@ class Body:
         """Lower Cholesky factor (m, m) of V at the predicted values."""
         v = prediction.effects @ prediction.effects.T
         v[np.diag_indices_from(v)] += self.own_variance(prediction)
-        factor: Real = np.linalg.cholesky(v)
-        return factor
+        return np.asarray(np.linalg.cholesky(v), dtype=float)
 
 
 def _joined(parts: Sequence[Real]) -> Real:

@@ -51,7 +51,10 @@ def _accuracy(collected: Collected, head: Headline) -> Iterator[Finding]:
     if not all(t.stated for t in tables.values()):
         miss = _closure(head)
         if miss > _CLOSURE:
-            text = f"the readings miss one another by up to {100 * miss:.1f} %, more than any meter should; check the hookups"
+            text = (
+                f"the readings miss one another by up to {100 * miss:.1f} %, more than any meter should; "
+                "check the hookups"
+            )
             yield Finding("caution", "closure", text)
 
 
@@ -81,7 +84,7 @@ def _nulls(windings: Mapping[str, WindingResult], pairs: Sequence[PairResult]) -
                 sided.append(f"{word} {both} is known from one side only: at {_side(q)}")
         if pair.mutual_magnitude is not None and pair.mutual is None:
             text = (
-                f"only the magnitude of M between {both} is known: either sign explains the readings. "
+                f"only the magnitude of M between {pair.windings[0]} and {pair.windings[1]} is known: either sign explains the readings. "
                 "Two readings in series, one way and the other, or a kick, would tell"
             )
             yield Finding("note", "sign", text)
@@ -113,7 +116,8 @@ def _losses(head: Headline) -> Iterator[Finding]:
         if shared.most is not None:
             text = (
                 f"losses that {pair} may share (core, shield, a plate nearby) are not told from M by these readings; "
-                f"with what their resistances exceed those to direct current, k lies in {whole.lower:.4g} to {whole.upper:.4g}"
+                "with what their resistances exceed those to direct current, k lies in "
+                f"{whole.lower:.4g} to {whole.upper:.4g}"
             )
         else:
             ends = [abs(float(measure.value(main.corner(k, part).theta))) for part in (1.0, -1.0)]
@@ -151,7 +155,7 @@ def _shorts(head: Headline) -> Iterator[Finding]:
                 closed = main.main.problem.body.closed
                 if closed and loss > 0 and omega * own / loss < _LOW_Q:
                     text = (
-                        f"{name} has a Q of {omega * own / loss:.2g} where it is shorted: the formula sqrt(1 - Ls/L) is "
-                        "wrong there; the estimate takes the resistance into account"
+                        f"{name} has a Q of {omega * own / loss:.2g} where it is shorted: the formula "
+                        "sqrt(1 - Ls/L) is wrong there; the estimate takes the resistance into account"
                     )
                     yield Finding("note", "resistive short", text)

@@ -147,7 +147,9 @@ def _tries(kappa: Real, diagonal: NDArray[np.bool_]) -> list[Real]:
     hidden = np.flatnonzero(np.isnan(base))
     if not hidden.size:
         return [base]
-    patterns = product((1.0, -1.0), repeat=len(hidden)) if len(hidden) <= _SIGN_PATTERNS_UP_TO else [(1.0,) * len(hidden)]
+    patterns = list(product((1.0, -1.0), repeat=min(len(hidden), _SIGN_PATTERNS_UP_TO)))
+    if len(hidden) > _SIGN_PATTERNS_UP_TO:
+        patterns = [(1.0,) * len(hidden)]
     out = []
     for signs in patterns:
         for size in TRIED:

@@ -89,13 +89,14 @@ def scatter_of(shown: Sequence[Shown]) -> Scatter:
     size = np.where(reciprocal, np.maximum(raw**2, 1e-300), 1.0)
     freedom = np.full(m, inf)
     together = []
-    for values, covariance, degrees in _from_repeats(shown):
+    for values, relative, degrees in _from_repeats(shown):
         scale = _relative_to(shown, values) / size[list(values)]
-        covariance = covariance * scale[:, None] * scale[None, :]
+        covariance = relative * scale[:, None] * scale[None, :]
         noise[list(values)] = np.sqrt(np.diag(covariance)) * size[list(values)]
         freedom[list(values)] = degrees
         if len(values) > 1 and degrees >= len(values):
-            factor: Real = np.linalg.cholesky(covariance + np.diag(1e-12 * np.diag(covariance) + 1e-300))
+            sure = covariance + np.diag(1e-12 * np.diag(covariance) + 1e-300)
+            factor: Real = np.asarray(np.linalg.cholesky(sure), dtype=float)
             together.append(Together(values, factor, degrees))
     frozen = noise < step / 2
     for number in range(len(numbers)):

@@ -101,7 +101,7 @@ def hint(values: dict[str, float], omega: float, transfer: bool) -> tuple[float,
     prefix = "transfer " if transfer else ""
     own = {name: value for name, value in values.items() if name in SHOWN and SHOWN[name].transfer == transfer}
     x, y = own.get(prefix + "resistance", np.nan), own.get(prefix + "inductance", np.nan) * omega
-    loss = own["dissipation"] if "dissipation" in own else np.nan
+    loss = own.get("dissipation", np.nan)
     if own.get("quality"):
         loss = 1 / own["quality"]
     if "impedance" in own:

@@ -17,13 +17,16 @@ from mutual.quoting import plain, shown
 
 Lines = Sequence[tuple[int, str]]
 
-_MARK = re.compile(r'\s*"?\s*#')
-_NOTHING = re.compile(r'[\s,"]*')
 _TOML_PLACE = re.compile(r"\s*\(at (?:line (\d+), column \d+|end of document)\)$")
 _KEY = re.compile(r"""\s*((?:"[^"]*"|'[^']*'|[\w-]+)(?:\s*\.\s*(?:"[^"]*"|'[^']*'|[\w-]+))*)\s*=""")
 _KEY_PART = re.compile(r""""([^"]*)"|'([^']*)'|([\w-]+)""")
-_STRING = re.compile(r""""(?:[^"\\]|\\.)*"|'[^']*'""")
-_BARE_ITEM = re.compile(r"""(?<=[\[,])(\s*)([^\s"'\[\]{},=]+)(?=\s*[,\]])""")
+# Unrolled, so that a string of megabytes takes no memory for going back.
+_STRING = re.compile(r""""[^"\\]*(?:\\.[^"\\]*)*"|'[^']*'""")
+# Items of a list without quotes that are no value of TOML either.
+_BARE_ITEM = re.compile(
+    r"""(?<=[\[,])(\s*)(?!(?:[+-]?[0-9][0-9_.eE+-]*|[+-]?inf|[+-]?nan|true|false)\s*[,\]])"""
+    r"""([^\s"'\[\]{},=]+)(?=\s*[,\]])"""
+)
 # The TOML reader takes time with the square of the number of parts of one key.
 _MOST_DOTS = 5000
 
@@ -89,9 +92,10 @@ def split(text: str) -> tuple[list[tuple[int, str]], list[str], int]:
     lines = list(io.StringIO(text, newline=""))
     preface: list[tuple[int, str]] = []
     for number, line in enumerate(lines, 1):
-        if _MARK.match(line):
-            preface.append((number, line.rstrip("\r\n")))
-        elif not _NOTHING.fullmatch(line):
+        begin = line.lstrip()
+        if begin.removeprefix('"').lstrip().startswith("#"):
+            preface.append((number, begin.rstrip("\r\n")))
+        elif begin.strip(' \t\r\n,"'):
             return preface, lines[number - 1 :], number
     return preface, [], len(lines) + 1
 
@@ -104,7 +108,7 @@ def understand(lines: Lines) -> Preface:
     RefusedInput
         Not TOML; the line of the file is named.
     """
-    quoted = any(text.lstrip().startswith('"') for _, text in lines)
+    quoted = any(text.startswith('"') for _, text in lines)
     padded = sum(text.endswith(",") for _, text in lines) > len(lines) / 2
     if not quoted:
         try:
@@ -129,7 +133,7 @@ def _toml(lines: Lines) -> Preface:
         raise RefusedInput("the preface is nested too deeply", line=lines[0][0]) from None
     except ValueError as error:
         message = str(error)
-        place = _TOML_PLACE.search(message)
+        place = _TOML_PLACE.search(message[-80:])
         number, text = lines[int(place.group(1)) - 1 if place and place.group(1) else -1]
         reason = plain(_TOML_PLACE.sub("", message)[:120])
         raise RefusedInput(
@@ -150,32 +154,17 @@ def _repaired(lines: Lines) -> list[tuple[int, str]]:
     depth = 0
     for number, text in lines:
         cells = text
-        if text.lstrip().startswith('"') or '""' in text:
-            cells = ",".join(next(csv.reader([text.strip()])))
+        if text.startswith('"') or '""' in text:
+            cells = ",".join(next(csv.reader([text])))
         line = _without_mark(cells).rstrip(", \t")
         bare = _STRING.sub("", line)
         depth = max(depth + sum(bare.count(c) for c in "[{") - sum(bare.count(c) for c in "]}"), 0)
         # The comma at the end of a line within an array went with the padding; one too many does no harm.
         if depth and line and line[-1] not in "[{,":
             line += ","
-        repaired.append((number, line if depth else _requoted(line)))
+        # A list written without spaces, ["A","B"], comes back as ["A",B].
+        repaired.append((number, _BARE_ITEM.sub(r'\1"\2"', line) if _BARE_ITEM.search(bare) else line))
     return repaired
-
-
-def _requoted(line: str) -> str:
-    """Give back the quotes of a list written without spaces, ["A","B"], which a spreadsheet leaves as ["A",B]."""
-    if "=" not in line or "[" not in line or _is_toml(line):
-        return line
-    mended = _BARE_ITEM.sub(r'\1"\2"', line)
-    return mended if _is_toml(mended) else line
-
-
-def _is_toml(line: str) -> bool:
-    try:
-        tomllib.loads(line)
-    except (ValueError, RecursionError):
-        return False
-    return True
 
 
 def allow_long_cells(length: int) -> None:

@@ -27,8 +27,14 @@ import mutual
 from mutual.result import Estimate, Quantity
 
 METHODS = (
-    "series both ways", "series one way", "open and short", "open and short, both sides", "parallel", "transfer", "mixed",
-)  # fmt: skip
+    "series both ways",
+    "series one way",
+    "open and short",
+    "open and short, both sides",
+    "parallel",
+    "transfer",
+    "mixed",
+)
 CLASSES = ("normal, interior", "rectangular", "near a limit", "one-sided", "unknown split")
 
 
@@ -50,8 +56,8 @@ def draw(rng: np.random.Generator) -> Bench:
     """One bench."""
     method = str(rng.choice(METHODS))
     n = 2 if method != "mixed" or rng.random() < 0.5 else int(rng.integers(3, 5))
-    near = rng.random()
-    coupling = rng.uniform(0.02, 0.97) if near < 0.8 else rng.uniform(0, 0.02) if near < 0.9 else rng.uniform(0.97, 0.9999)
+    ranges = ((0.02, 0.97), (0.0, 0.02), (0.97, 0.9999))
+    coupling = rng.uniform(*ranges[int(rng.choice(3, p=(0.8, 0.1, 0.1)))])
     inductance, resistance = draw_windings(rng, n, coupling * rng.choice([-1, 1]))
     losses = method != "mixed" and rng.random() < 0.25
     columns = ("inductance",) if losses else ("inductance", "resistance")

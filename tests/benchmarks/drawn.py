@@ -45,7 +45,9 @@ class Bench:
         """The same for the package."""
         return Device("drawn", tuple(Winding(*w) for w in self.windings))
 
-    def impedance(self, hookup: Any, inductance: np.ndarray | None = None, resistance: np.ndarray | None = None) -> complex:
+    def impedance(
+        self, hookup: Any, inductance: np.ndarray | None = None, resistance: np.ndarray | None = None
+    ) -> complex:
         """Impedance, or transfer impedance where a voltage is sensed."""
         across, tied, sense = hookup
         case = {
