@@ -87,14 +87,9 @@ def simulate(described: Described, seed: int) -> Recording:
                 kicks = _kicks(described, planned, turned, rng)
                 number = len(rows) + 1
                 rows.append(Row(number, planned.hookup, None, frequency, values, kicks, planned.instrument))
-    name = f"{described.device.name or 'described device'} (simulated)"
-    return Recording(
-        replace(described.device, name=name),
-        tuple(rows),
-        instruments=described.instruments,
-        kick=described.kick,
-        limits=described.limits,
-    )
+    device = replace(described.device, name=f"{described.device.name or 'described device'} (simulated)")
+    instruments, limits = described.instruments, described.limits
+    return Recording(device, tuple(rows), instruments=instruments, kick=described.kick, limits=limits)
 
 
 def written(recording: Recording, seed: int) -> str:
@@ -158,8 +153,8 @@ def _check_frequency(described: Described, planned: Planned, name: str, frequenc
     loops = compile_hookups(described.device, [planned.hookup]).loops[0]
     varies = any(len(t.values) > 1 for t in (*described.inductance, *described.coupling.values()))
     if name not in _ANY_FREQUENCY or (name not in KICKS and (loops or varies)):
-        reason, where = "the frequency is missing, and the value depends on it", f"none for {name!r} of {planned.hookup}"
-        raise RefusedInput(reason, column="readings.frequency", found=where)
+        reason = f"the frequency is missing, and the {name} of {planned.hookup} depends on it"
+        raise RefusedInput(reason, column="readings.frequency")
 
 
 def _true(described: Described, cases: Sequence[_Case]) -> Complex:

@@ -3,7 +3,7 @@
 from __future__ import annotations
 
 import json
-from math import sqrt
+from math import pi, sqrt
 
 import pytest
 from click.testing import CliRunner
@@ -71,18 +71,21 @@ def test_marks_that_the_readings_contradict_are_a_caution(run, readings):
 
 
 def test_a_shorted_reading_with_q_or_resistance(run):
-    bare = ["pair", "--first", "24.3uH,120", "--frequency", "100kHz", "--gain", "0.1%"]
-    by_q = estimate_of(run(*bare, "--first-with-short", "23.95uH,110", "--json"))["pairs"][0]
-    ohms = 2 * 3.141592653589793 * 1e5 * 23.95e-6 / 110
-    by_r = estimate_of(run(*bare, "--first-with-short", f"23.95uH,{ohms:.6f}ohm", "--json"))["pairs"][0]
-    assert by_q["coupling"]["value"] == pytest.approx(by_r["coupling"]["value"], rel=1e-3)
-    # k^2 >= 1 - Ls/L: 0.12001 by the lossless formula, with either
-    assert by_q["coupling"]["lower"] < 0.121
-    assert by_q["mutual_H"] is None
+    words = ["pair", "--first", "24.3uH,120", "--second", "18.9uH,120", "--frequency", "100kHz"]
+    words += ["--gain-common", "0.1%", "--phase-common", "0.1mrad"]
+    ohms = 2 * pi * 1e5 * 23.95e-6 / 110
+    by_q = estimate_of(run(*words, "--first-with-short", "23.95uH,110", "--json"))["pairs"][0]
+    by_r = estimate_of(run(*words, "--first-with-short", f"23.95uH,{ohms:.6f}ohm", "--json"))["pairs"][0]
+    for pair in (by_q, by_r):
+        # at a Q of 100 the lossless formula is good to 1e-3
+        assert pair["coupling"]["value"] == pytest.approx(sqrt(1 - 23.95 / 24.3), rel=2e-3)
+        assert pair["mutual_H"] is None
+    assert by_q["coupling"]["upper"] == pytest.approx(by_r["coupling"]["upper"], rel=1e-3)
 
 
 def test_the_last_digit_typed_counts_as_the_display_step(run):
-    words = ["pair", "--gain-common", "0.0001%", "--second", "18.900uH", "--one-way", "48.350uH", "--other-way", "38.050uH"]
+    words = ["pair", "--gain-common", "0.0001%", "--second", "18.900uH"]
+    words += ["--one-way", "48.350uH", "--other-way", "38.050uH"]
     coarse = estimate_of(run(*words, "--first", "24uH", "--json"))["windings"]["first"]["inductance_H"]
     fine = estimate_of(run(*words, "--first", "24.300uH", "--json"))["windings"]["first"]["inductance_H"]
     assert coarse["upper"] - coarse["lower"] > fine["upper"] - fine["lower"]
@@ -107,6 +110,12 @@ def test_every_accuracy_option_reaches_the_meter(run):
     sources = {line["source"] for line in found["budget"]}
     for word in ("gain, common", "gain, each", "floor", "noise", "counts"):
         assert any(word in source for source in sources), (word, sources)
+
+
+def test_a_gain_without_percent_is_taken_as_a_ratio_with_a_caution(run):
+    found = estimate_of(run("pair", "--first", "24.3uH", "--gain", "0.1", "--json"))
+    texts = [f["text"] for f in found["findings"] if f["code"] == "unit"]
+    assert texts == ["--gain 0.1 has no % and is taken for 10 %"]
 
 
 @pytest.mark.parametrize(

@@ -10,9 +10,18 @@ from estimates import OPEN, PAIR, WINDINGS, K, M, contradicting, full_estimate, 
 from mutual.reports.dots import render_polarity
 from mutual.reports.figures import figures, odds, probability, short
 from mutual.reports.terminal import render
-from mutual.result import Consistency, Finding, Polarity, Quantity, WindingResult
+from mutual.result import Consistency, Finding, Polarity, Quantity, StateResult, WindingResult
 
+LONG = {"p" * 70: WindingResult(("A" * 40, "B" * 40), K), "q" * 70: WindingResult(("C" * 40, "D" * 40))}
 EVERY = {
+    "long": replace(
+        full_estimate(),
+        windings=LONG,
+        pairs=(replace(full_estimate().pairs[0], windings=tuple(LONG), polarity=OPEN),),
+        dots=(("A" * 40, "C" * 40), ("B" * 40, "D" * 40)),
+        by_frequency=(),
+        by_point=(StateResult(LONG, full_estimate().pairs, point={"gap": "g" * 90}),),
+    ),
     "plain": pair_estimate(),
     "full": full_estimate(),
     "contradicting": contradicting(suspect(), suspect("the inductance should read 38.1 nH: " * 5, coupling=None)),

@@ -146,7 +146,19 @@ def _recording(typed: Mapping[str, Any], frequency: float | None, shared_loss: f
         refuse_negative_inductance(rows, instruments)
     except RefusedInput as refused:
         raise _of_option(refused, given[(refused.row or 1) - 1]) from None
-    return Recording(device, rows, instruments=instruments, source=_source(typed, given, frequency))
+    source, findings = _source(typed, given, frequency), _bare_ratios(typed)
+    return Recording(device, rows, instruments=instruments, findings=findings, source=source)
+
+
+def _bare_ratios(typed: Mapping[str, Any]) -> tuple[Finding, ...]:
+    """A caution for each gain typed without `%`: it may have been meant in percent."""
+    given = {option: typed[_key(option)] for option in ACCURACY if option.startswith("--gain")}
+    texts = {
+        option: f"{option} {value} has no % and is taken for {100 * float(value):g} %"
+        for option, value in given.items()
+        if value and re.fullmatch(r"[\s0-9.eE+-]+", value)
+    }
+    return tuple(Finding("caution", "unit", text, option) for option, text in texts.items())
 
 
 def _of_option(

@@ -54,7 +54,7 @@ def sheet(
     write_new(file, text)
     say("\n\n".join(_drawings(device)))
     say(f"\nWritten: {safe(file)}")
-    say("Fill in what was read and state the meter's accuracy in the first lines; then run")
+    say("Fill in what was read, state the meter's accuracy in the first lines, then run")
     say(f"    mutual estimate {safe(file)}")
 
 

@@ -125,7 +125,7 @@ def probability(p: float, symbol: str = "p") -> str:
         return f"{symbol} below 1e-12"
     if p < 0.001:
         return f"{symbol} = {p:.1e}".replace("e-0", "e-")
-    if 0.999 < p < 1:
+    if p > 0.999:
         return f"{symbol} above 0.999"
     return f"{symbol} = {p:.2g}"
 

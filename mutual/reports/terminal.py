@@ -66,7 +66,7 @@ def _pair_lines(pair: PairResult, estimate: Estimate, width: int, detail: bool) 
         lines.append(("1-k", pair.one_minus_coupling, "1"))
     varies = pair.coupling is None and any(p.coupling is not None for p in others)
     text = wrapped(" and ".join(safe(name) for name in pair.windings), width)
-    text += quantity_lines(lines, width, _null_text(varies, states))
+    text += quantity_lines(lines, width, _null_text(varies, estimate))
     text += wrapped(pair_words(pair, estimate), width, MARGIN, MARGIN + "  ")
     return text + (quantity_lines(_more_of(pair), width) if detail else [])
 
@@ -92,7 +92,7 @@ def _winding_lines(name: str, result: WindingResult, estimate: Estimate, width: 
     for line in lines:
         field = {"L": "inductance", "R": "resistance"}.get(line[0])
         varies = field is not None and any(getattr(s.windings[name], field) is not None for s in states)
-        shown += quantity_lines([line], width, _null_text(varies, states))
+        shown += quantity_lines([line], width, _null_text(varies, estimate))
     return heading + shown
 
 
@@ -100,10 +100,12 @@ def _states(estimate: Estimate) -> tuple[StateResult, ...]:
     return estimate.by_frequency or estimate.by_point
 
 
-def _null_text(varies: bool, states: Sequence[StateResult]) -> str:
+def _null_text(varies: bool, estimate: Estimate) -> str:
+    """What to say of a missing value, which may be missing because each frequency or point has its own."""
     if not varies:
         return NOT_DETERMINED
-    return f"one value for each {'frequency' if states[0].point is None else 'point'}: --detail lists them"
+    where = "see below" if estimate.headline_basis == "none" else "--detail lists them"
+    return f"one value for each {'point' if _states(estimate)[0].point is not None else 'frequency'}: {where}"
 
 
 def quantity_lines(lines: Sequence[Line], width: int, null: str = NOT_DETERMINED) -> list[str]:
