@@ -81,6 +81,9 @@ class Bounds:
             return self._where_open(measure) if flat else None
         parts = self.posterior.contributions(gradient)
         standard = float(np.sqrt(parts.variance))
+        plain = measure.kind == "entry" and self.problem.body.linear
+        if not plain and self.posterior.feigned(measure.value, standard):
+            return None
         if self._by_square(measure, standard) or not self._straight(measure, gradient, standard):
             return self._from_profile(measure, standard, parts)
         if self.posterior.limited(parts) and self.posterior.draws is not None:
@@ -204,8 +207,8 @@ class Bounds:
         lower = self._profile.crossing(measure, value, -step, least)
         if upper is None and lower is None:
             return None
-        low = least if lower is None else lower
-        high = most if upper is None else upper
+        low = least if lower is None else min(lower, value)
+        high = most if upper is None else max(upper, value)
         if not (np.isfinite(low) and np.isfinite(high)):
             return None
         half = (high - low) / 2 / float(ndtri((1 + self.coverage) / 2))

@@ -12,7 +12,7 @@ Hanson, Solving Least Squares Problems, ch. 23).
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 from numpy.typing import NDArray
@@ -211,6 +211,18 @@ def _line_search(
             return out, length * float(np.max(np.abs(step))) > _CONVERGED
         length /= 2
     return theta, False
+
+
+def linearised(problem: Problem, best: Fit) -> Fit:
+    """The unconstrained minimum as seen from a fit on the border of physics: one step, nothing evaluated there.
+
+    Where the model is not linear, an unconstrained search beyond the border may end anywhere.
+    """
+    step = best.vt.T @ ((best.u.T @ best.residual) / best.s)
+    theta = best.theta.copy()
+    theta[best.free] += step * problem.unknowns.scale[best.free]
+    residual = best.residual - best.jacobian @ step
+    return replace(best, theta=theta, chi_square=float(residual @ residual), residual=residual)
 
 
 def _finish(problem: Problem, theta: Real, free: NDArray[np.int64]) -> Fit:

@@ -187,7 +187,12 @@ class Body:
         """Lower Cholesky factor (m, m) of V at the predicted values."""
         v = prediction.effects @ prediction.effects.T
         v[np.diag_indices_from(v)] += self.own_variance(prediction)
-        return np.asarray(np.linalg.cholesky(v), dtype=float)
+        try:
+            return np.asarray(np.linalg.cholesky(v), dtype=float)
+        except np.linalg.LinAlgError:
+            # Far from any answer effects may differ by more than double precision holds.
+            v[np.diag_indices_from(v)] *= 1 + 1e-9
+            return np.asarray(np.linalg.cholesky(v), dtype=float)
 
 
 def _joined(parts: Sequence[Real]) -> Real:

@@ -13,15 +13,19 @@ from numpy.typing import NDArray
 from scipy.special import chdtrc
 
 from mutual.bounds import Bounds, Interval
-from mutual.engine import Fit, Problem, fit
+from mutual.engine import Fit, Problem, fit, linearised
 from mutual.evidence import Body, Evidence
-from mutual.nuisance import Shared, at_corner, bounded, open_shared
+from mutual.nuisance import Shared, bounded, open_shared, with_loss
 from mutual.physics import Region
 from mutual.quantities import Measure
+from mutual.sharing import Sharing
 from mutual.start import make_start
 
 Real = NDArray[np.float64]
 
+_AS_GOOD = 1e-6
+_BETTER = 1e-3
+_ALLOWED = 4.0
 # Losses of windings of which none was read, as R/(omega L).
 _LOSSES = (0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0)
 
@@ -64,25 +68,50 @@ class Explanation:
         problem = Problem(Body(pieces), start.unknowns, start.unknowns.fixed.copy())
         free, best = self._least(problem, start.thetas)
         self.shared: list[Shared] = []
+        self._sharing: Sharing | None = None
         hidden = open_shared(problem, free)
         if hidden:
             self.shared = [bounded(problem, free, where) for where in hidden]
-            problem = problem.holding(np.array([start.unknowns.resistance(*w) for w in hidden]))
-            free, best = self._least(problem, start.thetas)
+            free, best, problem = self._with_shared(problem, start.thetas)
         self.main = self._setting(problem, free, best)
-        self._corners: dict[tuple[int, float], Fit] = {}
         self._lossy: list[tuple[float, Setting]] | None = None
+
+    def _with_shared(self, problem: Problem, thetas: Sequence[Real]) -> tuple[Fit, Fit, Problem]:
+        """Hold the open mutual resistances at nil, or where they have to be within their bounds."""
+        places = np.array([self.unknowns.resistance(s.state, s.i, s.j) for s in self.shared])
+        held = problem.holding(places)
+        free, best = self._least(held, thetas)
+        self._sharing = Sharing(problem, tuple(self.shared), self.part, self.coverage)
+        within = fit(problem, best.theta, self._sharing.region(best))
+        if within.chi_square < best.chi_square - _BETTER:
+            free, best = self._least(held, [within.theta])
+        return free, best, held
 
     def _least(self, problem: Problem, thetas: Sequence[Real]) -> tuple[Fit, Fit]:
         """Lowest of the fits from all starts; a physical one where others are no better."""
         fits = [fit(problem, theta) for theta in thetas]
         least = min(f.chi_square for f in fits)
-        good = [f for f in fits if f.chi_square < least + 1e-3]
-        free = next((f for f in good if self.region.contains(f.theta)), good[0])
-        return free, self._physical(problem, free)
+        good = [f for f in fits if f.chi_square <= least + 1e-3]
+        physical = [f for f in good if self.region.contains(f.theta)]
+        if physical:
+            # Of explanations that are equally good the one with the least unread loss is the textbook's.
+            free = min(physical, key=self._loss)
+            return free, free
+        free = good[0]
+        best = fit(problem, free.theta, self.region)
+        for theta in thetas:
+            if best.chi_square <= free.chi_square + _AS_GOOD:
+                break
+            best = min(best, fit(problem, theta, self.region), key=lambda f: f.chi_square)
+        if best.chi_square <= free.chi_square + _AS_GOOD:
+            # Where the data leave a direction open, a physical point may explain them as well as one that is not.
+            return best, best
+        return (free if problem.body.linear else linearised(problem, best)), best
 
-    def _physical(self, problem: Problem, free: Fit) -> Fit:
-        return free if self.region.contains(free.theta) else fit(problem, free.theta, self.region)
+    def _loss(self, found: Fit) -> float:
+        """Unread losses in natural sizes, in steps that rounding does not decide."""
+        relative = found.theta[self.unknowns.squared] / self.unknowns.scale[self.unknowns.squared]
+        return round(float(np.sum(np.abs(relative))), 6)
 
     def _setting(self, problem: Problem, free: Fit, best: Fit) -> Setting:
         return Setting(problem, free, best, Bounds(problem, free, best, self.region, self.coverage))
@@ -113,9 +142,9 @@ class Explanation:
         side = "both"
         if found is None and unread.size:
             found, side = self._over_losses(measure, unread)
-        if found is None:
-            return None, side
-        return self._over_shared(measure, found), side
+        if found is None or self._sharing is None:
+            return found, side
+        return self.over_shared(measure, found, None)
 
     def _unread(self) -> NDArray[np.int64]:
         """Squared resistances that bear on the data."""
@@ -128,6 +157,14 @@ class Explanation:
         """Union over the losses of windings of which none was read, from none upward."""
         if self._lossy is None:
             self._lossy = self._losses(unread)
+        lossless = self._lossy[0][1]
+        if lossless.best.chi_square > self.chi_square + _ALLOWED:
+            # Some loss there must be: chi-square says how little and how much.
+            found = self.main.bounds.interval(measure)
+            side = "both"
+            if found is not None and found.at_lower != found.at_upper:
+                side = "lower" if found.at_upper else "upper"
+            return (found if found is None or side == "both" else replace(found, standard=None)), side
         least = self._lossy[0][1].bounds.interval(measure)
         if least is None:
             return None, "both"
@@ -146,34 +183,19 @@ class Explanation:
 
     def _losses(self, unread: NDArray[np.int64]) -> list[tuple[float, Setting]]:
         """Settings with the unread resistances held: at nothing, then rising while the readings allow it."""
-        # A self-inductance that nothing shows only sets a scale: it stays, or it would make up for the loss.
-        scales = [p for p in self._own_inductances() if not self.main.bounds.posterior.determined(self._unit(p))]
         lossless = self.main.problem.holding(unread)
-        lossy = lossless.holding(np.array(scales, dtype=np.int64))
         out: list[tuple[float, Setting]] = []
-        allowed = np.inf
         for loss in (0.0, *_LOSSES):
             theta = self.main.free.theta.copy() if not out else out[-1][1].free.theta.copy()
             theta[unread] = loss**2 * self.unknowns.scale[unread]
             starts = [theta]
             if not out:
                 starts += [self._with(t, theta, unread) for t in self._flipped(theta)]
-            problem = lossy if out else lossless
+            problem = with_loss(self.main.problem, unread, loss) if out else lossless
             free, best = self._least(problem, starts)
-            if not out:
-                allowed = best.chi_square + 4.0
-            elif best.chi_square > allowed:
+            if out and best.chi_square > out[0][1].best.chi_square + _ALLOWED:
                 break
             out.append((loss, self._setting(problem, free, best)))
-        return out
-
-    def _own_inductances(self) -> list[int]:
-        u = self.unknowns
-        return [u.inductance(g, i, i) for g in range(u.groups) for i in range(u.windings)]
-
-    def _unit(self, position: int) -> Real:
-        out = np.zeros(self.unknowns.size)
-        out[position] = 1.0
         return out
 
     def _with(self, theta: Real, values: Real, positions: NDArray[np.int64]) -> Real:
@@ -189,31 +211,7 @@ class Explanation:
         out[: len(off)][off] = 0.5 * u.scale[: len(off)][off]
         return [out]
 
-    def corner(self, k: int, part: float) -> Fit:
-        """The fit with one open mutual resistance at a part of its bound, or of sqrt(R1 R2)."""
-        if (k, part) not in self._corners:
-            shared = self.shared[k]
-            problem = at_corner(self.main.problem, shared, part)
-            u = self.unknowns
-            theta = self.main.best.theta.copy()
-            r1, r2 = (abs(float(theta[u.resistance(shared.state, w, w)])) for w in (shared.i, shared.j))
-            most = shared.most if shared.most is not None else float(np.sqrt(r1 * r2))
-            theta[u.resistance(shared.state, shared.i, shared.j)] = part * most
-            self._corners[k, part] = self._least(problem, [theta])[1]
-        return self._corners[k, part]
-
-    @staticmethod
-    def _at(measure: Measure, found: Fit) -> float:
-        value = float(measure.value(found.theta))
-        return float(np.clip(abs(value) if measure.folded else value, *measure.limits))
-
-    def _over_shared(self, measure: Measure, found: Interval) -> Interval:
-        """Union over the open mutual resistances: what each end of each does to the value is added."""
-        lower, upper = found.lower, found.upper
-        for k, shared in enumerate(self.shared):
-            size = 1.0 if shared.most is not None else self.part
-            ends = [self._at(measure, self.corner(k, part)) for part in (size, -size)]
-            lower -= max(found.value - min(ends), 0.0)
-            upper += max(max(ends) - found.value, 0.0)
-        least = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
-        return replace(found, lower=max(lower, least), upper=min(upper, measure.limits[1]))
+    def over_shared(self, measure: Measure, found: Interval, part: float | None) -> tuple[Interval, str]:
+        """Widen bounds to what open mutual resistances may do, within their bounds or a part of sqrt(R1 R2)."""
+        assert self._sharing is not None
+        return self._sharing.widened(self.main.best, self.main.bounds.posterior, measure, found, part)

@@ -9,7 +9,7 @@ from itertools import combinations
 import numpy as np
 from numpy.typing import NDArray
 
-from mutual.engine import OPEN_ABOVE, fit
+from mutual.engine import OPEN_ABOVE, Pin, fit
 from mutual.explain import Explanation
 from mutual.quantities import Measure, pair_measures
 
@@ -66,16 +66,18 @@ def _local(explanation: Explanation, names: list[str], group: int, i: int, j: in
     posterior, theta = explanation.main.bounds.posterior, explanation.main.free.theta
     for measure in _measures(explanation, names, group, i, j):
         gradient = measure.gradient(theta)
-        if posterior.determined(gradient):
+        standard = float(np.sqrt(posterior.contributions(gradient).variance))
+        if posterior.determined(gradient) and not posterior.feigned(measure.value, standard):
             value = float(measure.value(theta))
             spread = posterior.spread(posterior.contributions(gradient))
             upper, lower = spread.below(value), spread.below(-value)
             return float(np.log(max(upper, 1e-300)) - np.log(max(lower, 1e-300)))
-    value = float(theta[explanation.unknowns.inductance(group, i, j)])
-    column = explanation.unknowns.inductance(group, i, j)
-    where = np.flatnonzero(explanation.main.free.free == column)
-    bears = bool(where.size) and np.linalg.norm(explanation.main.free.jacobian[:, where[0]]) > 1e-6
-    return (_CERTAIN if value >= 0 else -_CERTAIN) if bears else 0.0
+    # Not determined: what stands between here and the other sign is chi-square where M is nil.
+    best = explanation.main.best
+    coupling = next(iter(_measures(explanation, names, group, i, j)))
+    at_nil = fit(explanation.main.problem, best.theta, explanation.region, Pin(coupling, 0.0, 1e-4), steps=25)
+    rise = max(at_nil.chi_square - best.chi_square, 0.0)
+    return (rise if float(coupling.value(best.theta)) >= 0 else -rise) / 2
 
 
 def _other_minimum(explanation: Explanation, group: int, i: int, j: int, sign: float) -> float | None:

@@ -45,34 +45,31 @@ class Shared:
     most: float | None
 
 
-class SharedLossAt:
-    """Evidence that a mutual resistance has a given part of its bound: the corner of a nuisance, not a reading."""
+class LossAt:
+    """Evidence that windings have a given R/(omega L) at one frequency: a nuisance held, not a reading."""
 
-    def __init__(self, shared: Shared, part: float) -> None:
-        self._shared, self._part = shared, part
-        self.values: Real = np.zeros(1)
-        self.noise: Real = np.full(1, _WIDTH)
-        self.freedom: Real = np.full(1, np.inf)
-        self.rounding: Real = np.zeros(1)
+    def __init__(self, where: Sequence[tuple[int, int]], ratio: float) -> None:
+        m = len(where)
+        self._where, self._ratio = where, ratio
+        self.values: Real = np.full(m, ratio**2)
+        self.noise: Real = np.full(m, _WIDTH * ratio**2)
+        self.freedom: Real = np.full(m, np.inf)
+        self.rounding: Real = np.zeros(m)
         self.sources: Sequence[Source] = ()
-        self.labels: Sequence[str] = ("shared loss",)
-        self.straight = np.zeros(1, dtype=bool)
+        self.labels: Sequence[str] = ("unread loss",) * m
+        self.straight = np.zeros(m, dtype=bool)
         self.closed = False
 
     def predict(self, unknowns: Unknowns, theta: Real) -> Prediction:
-        """Distance of Rm from its corner, relative to sqrt(R1 R2), and derivatives."""
-        s = self._shared
-        own, other, m = (unknowns.resistance(s.state, *ij) for ij in ((s.i, s.i), (s.j, s.j), (s.i, s.j)))
-        r1, r2 = (max(abs(float(theta[p])), 1e-12 * float(unknowns.scale[p])) for p in (own, other))
-        jacobian = np.zeros((1, unknowns.size))
-        root = float(np.sqrt(r1 * r2))
-        if s.most is not None:
-            scale = float(unknowns.scale[m])
-            jacobian[0, m] = 1 / scale
-            return Prediction(np.array([(theta[m] - self._part * s.most) / scale]), jacobian, np.zeros((1, 0)))
-        ratio = float(theta[m]) / root
-        jacobian[0, [own, other, m]] = [-ratio / 2 / r1, -ratio / 2 / r2, 1 / root]
-        return Prediction(np.array([ratio - self._part]), jacobian, np.zeros((1, 0)))
+        """(R/(omega L))^2 of each winding."""
+        jacobian = np.zeros((len(self._where), unknowns.size))
+        values = np.zeros(len(self._where))
+        for v, (state, i) in enumerate(self._where):
+            r, own = unknowns.resistance(state, i, i), unknowns.inductance(0, i, i)
+            reactance = unknowns.omegas[state] * float(theta[own])
+            values[v] = float(theta[r]) / reactance**2
+            jacobian[v, [r, own]] = [1 / reactance**2, -2 * values[v] / float(theta[own])]
+        return Prediction(values, jacobian, np.zeros((len(values), 0)))
 
     def hints(self) -> Hints:
         """It has none.
@@ -127,9 +124,9 @@ def bounded(problem: Problem, fit: Fit, where: tuple[int, int, int]) -> Shared:
     return Shared(f, i, j, float(np.sqrt(excess[0] * excess[1])))
 
 
-def at_corner(problem: Problem, shared: Shared, part: float) -> Problem:
-    """The problem with one mutual resistance at a part (-1..1 of its bound, or of sqrt(R1 R2))."""
-    held = problem.held.copy()
-    held[problem.unknowns.resistance(shared.state, shared.i, shared.j)] = False
-    pieces: tuple[Evidence, ...] = (*problem.body.pieces, SharedLossAt(shared, part))
-    return Problem(Body(pieces), problem.unknowns, held)
+def with_loss(problem: Problem, unread: NDArray[np.int64], ratio: float) -> Problem:
+    """The problem with the unread resistances at a part of omega L."""
+    u = problem.unknowns
+    where = [(f, i) for f in range(len(u.omegas)) for i in range(u.windings) if u.resistance(f, i, i) in unread]
+    pieces: tuple[Evidence, ...] = (*problem.body.pieces, LossAt(where, ratio))
+    return Problem(Body(pieces), u, problem.held)

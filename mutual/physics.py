@@ -52,34 +52,52 @@ class Cuts:
 
 
 @dataclass(frozen=True)
+class Block:
+    """One matrix that must be positive semidefinite.
+
+    Attributes
+    ----------
+    offset : int
+        Position of the first unknown of its set.
+    matrix : (w, w) float
+        In natural sizes.
+    windings : (w,) int
+    factor : float
+        What entries off the diagonal are multiplied by.
+    """
+
+    offset: int
+    matrix: Real
+    windings: NDArray[np.int64]
+    factor: float = 1.0
+
+
+@dataclass(frozen=True)
 class Region:
     """Where a passive device can be.
 
     Attributes
     ----------
     unknowns : Unknowns
+    shared : tuple of (state, i, j, part)
+        Mutual resistances that stay below a part of sqrt(R1 R2).
     """
 
     unknowns: Unknowns
+    shared: tuple[tuple[int, int, int, float], ...] = ()
 
     def cuts(self) -> Cuts:
         """A fresh, empty collection."""
         return Cuts()
 
-    def blocks(self, theta: Real) -> list[tuple[int, Real, NDArray[np.int64]]]:
-        """Matrices in natural sizes that must be positive semidefinite.
-
-        Returns
-        -------
-        list of (offset, (w, w) matrix, (w,) windings)
-            `offset` is the position of the block's first unknown.
-        """
+    def blocks(self, theta: Real) -> list[Block]:
+        """Matrices in natural sizes that must be positive semidefinite."""
         u = self.unknowns
         out = []
         relative = theta / u.scale
         everyone = np.arange(u.windings)
         for g in range(u.groups):
-            out.append((g * u.entries, u.symmetric(relative[g * u.entries :][: u.entries]), everyone))
+            out.append(Block(g * u.entries, u.symmetric(relative[g * u.entries :][: u.entries]), everyone))
         for f in range(len(u.omegas)):
             offset = (u.groups + f) * u.entries
             matrix = u.symmetric(relative[offset : offset + u.entries])
@@ -87,26 +105,30 @@ class Region:
             if u.omegas[f] == 0:
                 read = np.zeros_like(read)
             if read.any():
-                out.append((offset, matrix[np.ix_(read, read)], everyone[read]))
-            out += [(offset, matrix[i : i + 1, i : i + 1], everyone[i : i + 1]) for i in everyone[~read]]
+                out.append(Block(offset, matrix[np.ix_(read, read)], everyone[read]))
+            out += [Block(offset, matrix[i : i + 1, i : i + 1], everyone[i : i + 1]) for i in everyone[~read]]
+        for f, i, j, part in self.shared:
+            offset, pair = (u.groups + f) * u.entries, np.array([i, j])
+            matrix = u.symmetric(relative[offset : offset + u.entries])[np.ix_(pair, pair)]
+            out.append(Block(offset, matrix * np.array([[1.0, 1 / part], [1 / part, 1.0]]), pair, 1 / part))
         return out
 
     def directions(self, theta: Real) -> list[tuple[float, Real]]:
         """Smallest eigenvalue of each block (natural sizes) and the row (P,) of its derivative."""
         found = []
-        for offset, matrix, windings in self.blocks(theta):
-            values, vectors = np.linalg.eigh(matrix)
-            found.append((float(values[0]), self._row(offset, vectors[:, 0], windings)))
+        for block in self.blocks(theta):
+            values, vectors = np.linalg.eigh(block.matrix)
+            found.append((float(values[0]), self._row(block, vectors[:, 0])))
         return found
 
     def violated(self, theta: Real, cuts: Cuts) -> bool:
         """Add a cut for every negative eigenvalue; whether there was any."""
         fresh = False
-        for offset, matrix, windings in self.blocks(theta):
-            values, vectors = np.linalg.eigh(matrix)
+        for block in self.blocks(theta):
+            values, vectors = np.linalg.eigh(block.matrix)
             for value, vector in zip(values, vectors.T, strict=True):
                 if value < -TOLERANCE * max(1.0, float(values[-1])):
-                    cuts.rows.append(self._row(offset, vector, windings))
+                    cuts.rows.append(self._row(block, vector))
                     fresh = True
         return fresh
 
@@ -114,13 +136,17 @@ class Region:
         """Whether a vector of unknowns is physical."""
         return all(value >= -TOLERANCE * 10 for value, _ in self.directions(theta))
 
-    def inside(self, thetas: Real) -> NDArray[np.bool_]:
-        """(N,) which of many vectors (N, P) are physical."""
+    def inside(self, thetas: Real, skipped: frozenset[int] = frozenset()) -> NDArray[np.bool_]:
+        """(N,) which of many vectors (N, P) are physical, some of the limits (numbered as in `directions`) left out."""
         u = self.unknowns
         keep = np.ones(len(thetas), dtype=bool)
         relative = thetas / u.scale
-        for offset, _, windings in self.blocks(thetas[0]):
-            matrices = u.symmetric(relative[:, offset : offset + u.entries])[:, windings[:, None], windings[None, :]]
+        for k, block in enumerate(self.blocks(thetas[0])):
+            if k in skipped:
+                continue
+            windings, entries = block.windings, relative[:, block.offset : block.offset + u.entries]
+            matrices = u.symmetric(np.where(u.first == u.second, 1.0, block.factor) * entries)
+            matrices = matrices[:, windings[:, None], windings[None, :]]
             if len(windings) <= 2:
                 keep &= np.all(np.einsum("nii->ni", matrices) >= 0, axis=1)
                 if len(windings) == 2:
@@ -129,11 +155,11 @@ class Region:
                 keep &= np.linalg.eigvalsh(matrices)[:, 0] >= 0
         return keep
 
-    def _row(self, offset: int, vector: Real, windings: NDArray[np.int64]) -> Real:
+    def _row(self, block: Block, vector: Real) -> Real:
         u = self.unknowns
         full = np.zeros(u.windings)
-        full[windings] = vector
+        full[block.windings] = vector
         row = np.zeros(u.size)
-        weight = np.where(u.first == u.second, 1.0, 2.0) * full[u.first] * full[u.second]
-        row[offset : offset + u.entries] = weight
+        weight = np.where(u.first == u.second, 1.0, 2.0 * block.factor) * full[u.first] * full[u.second]
+        row[block.offset : block.offset + u.entries] = weight
         return row

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections.abc import Callable
 from dataclasses import dataclass
 from functools import cached_property
 
@@ -81,6 +82,31 @@ class Posterior:
         left = g - self.fit.vt.T @ (self.fit.vt @ g)
         return float(np.linalg.norm(left)) < _DETERMINED * size
 
+    @cached_property
+    def elsewhere(self) -> Real | None:
+        """Another vector that explains the data as well, where they leave inductances open; None where they do not."""
+        from mutual.engine import fit as find
+
+        f, u = self.fit, self.problem.unknowns
+        entries = len(u.first)
+        among = f.free < entries * u.groups
+        null = np.eye(len(f.free)) - f.vt.T @ f.vt
+        null[:, ~among] = 0.0
+        step = null @ (0.3 * np.cos(1.0 + np.arange(len(f.free))))
+        if float(np.max(np.abs(step), initial=0.0)) < 1e-3:
+            return None
+        theta = f.theta.copy()
+        theta[f.free] += step * u.scale[f.free]
+        found = find(self.problem, theta)
+        return found.theta if found.chi_square <= f.chi_square + 0.01 else None
+
+    def feigned(self, value: Callable[[Real], Real], standard: float) -> bool:
+        """Whether a quantity only seems determined, its slope being nil where the fit happens to stand."""
+        if self.elsewhere is None:
+            return False
+        here, there = float(value(self.fit.theta)), float(value(self.elsewhere))
+        return abs(here - there) > standard + 1e-3 * abs(here)
+
     def contributions(self, gradient: Real) -> Contributions:
         """How a quantity with this gradient depends on every error."""
         weight = self._scaled(gradient) @ self.gain
@@ -117,9 +143,15 @@ class Posterior:
         for value, row in self.region.directions(self.fit.theta):
             gradient = row / self.problem.unknowns.scale
             parts = self.contributions(gradient)
-            if parts.variance > 0 and value < NEAR * np.sqrt(parts.variance):
+            if self.determined(gradient) and parts.variance > 0 and value < NEAR * np.sqrt(parts.variance):
                 found.append(parts)
         return found
+
+    @cached_property
+    def _open_limits(self) -> frozenset[int]:
+        """Limits that the data do not reach: what they leave open can always give way."""
+        rows = enumerate(self.region.directions(self.fit.theta))
+        return frozenset(k for k, (_, row) in rows if not self.determined(row / self.problem.unknowns.scale))
 
     def limited(self, parts: Contributions) -> bool:
         """Whether a physical limit within reach bears on a quantity."""
@@ -137,7 +169,7 @@ class Posterior:
         kept: list[Real] = []
         for _ in range(8):
             every = self._anywhere(rng)
-            inside = every[self.region.inside(every)]
+            inside = every[self.region.inside(every, self._open_limits)]
             kept.append(inside)
             if len(inside) > 0.9 * len(every) or sum(map(len, kept)) >= _DRAWS:
                 break
@@ -197,7 +229,7 @@ class Posterior:
                 tried = state * np.cos(angle)[:, None] + ellipse * np.sin(angle)[:, None]
                 full = chains.copy()
                 full[:, free] = (tried + middle) * scale
-                good = waiting & self.region.inside(full)
+                good = waiting & self.region.inside(full, self._open_limits)
                 fresh[good] = tried[good]
                 waiting &= ~good
                 if not waiting.any():

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import numpy as np
+from numpy.typing import NDArray
 from scipy.special import ndtri
 
 from mutual.engine import Fit, Pin, Problem, fit
@@ -10,6 +11,8 @@ from mutual.physics import Region
 from mutual.posterior import NEAR
 from mutual.quantities import Measure
 
+Real = NDArray[np.float64]
+_UPRIGHT = 3.0
 # A crossing is near enough when the root of the rise is right to this part.
 _CLOSE = 3e-3
 # Width of a pin in steps: the fit may rest a little beside it, and is taken where it rests.
@@ -54,33 +57,44 @@ class Profile:
         sign = -1.0 if float(measure.value(self._best.theta)) < 0 and measure.folded else 1.0
         theta = self._best.theta
 
-        def profile(at: float) -> tuple[float, float]:
-            """Where the fit came to rest near `at` (a soft pin converges fast), and the root of its rise."""
-            nonlocal theta
-            pinned = fit(self._problem, theta, self._region, Pin(measure, sign * at, _SOFT * abs(step)), steps=25)
-            theta = pinned.theta
-            rise = float(np.sqrt(max(pinned.chi_square - self._best.chi_square, 0.0)))
-            return sign * float(measure.value(theta)), rise
+        def profile(at: float) -> tuple[float, float, Real]:
+            """Where the fit came to rest near `at` (a soft pin converges fast), the root of its rise, its unknowns."""
+            return self._pinned(measure, sign, at, value, step, theta)
 
         near, low, target = value, 0.0, value + 2 * step
         for _ in range(30):
             beyond = (target - limit) * np.sign(step) >= 0
-            far, high = profile(limit if beyond else target)
+            far, high, moved = profile(limit if beyond else target)
             if high >= wanted:
                 break
             if beyond:
                 return None
-            near, low = far, high
+            near, low, theta = far, high, moved
             target = value + (target - value) * float(np.clip(1.1 * wanted / max(high, 1e-9), 1.5, 4.0))
         else:
             return None
-        for _ in range(12):
-            part = float(np.clip((wanted - low) / (high - low), 0.05, 0.95))
-            middle, rise = profile(near + (far - near) * part)
+        for _ in range(30):
+            # A wall of physics stands upright: there only halving comes near it.
+            part = 0.5 if high > _UPRIGHT * wanted else float(np.clip((wanted - low) / (high - low), 0.05, 0.95))
+            middle, rise, moved = profile(near + (far - near) * part)
             if abs(rise - wanted) < _CLOSE * wanted:
                 return middle
             if rise > wanted:
                 far, high = middle, rise
             else:
-                near, low = middle, rise
-        return near + (far - near) * (wanted - low) / (high - low)
+                near, low, theta = middle, rise, moved
+            if abs(far - near) < _CLOSE * abs(far - value):
+                return far
+        return far
+
+    def _pinned(
+        self, measure: Measure, sign: float, at: float, value: float, step: float, start: Real
+    ) -> tuple[float, float, Real]:
+        width = _SOFT * abs(step)
+        for _ in range(4):
+            pinned = fit(self._problem, start, self._region, Pin(measure, sign * at, width), steps=40)
+            reached = sign * float(measure.value(pinned.theta))
+            if abs(reached - at) < 0.2 * abs(at - value):
+                break
+            width /= 30
+        return reached, float(np.sqrt(max(pinned.chi_square - self._best.chi_square, 0.0))), pinned.theta

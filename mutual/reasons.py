@@ -84,7 +84,8 @@ def _nulls(windings: Mapping[str, WindingResult], pairs: Sequence[PairResult]) -
                 sided.append(f"{word} {both} is known from one side only: at {_side(q)}")
         if pair.mutual_magnitude is not None and pair.mutual is None:
             text = (
-                f"only the magnitude of M between {pair.windings[0]} and {pair.windings[1]} is known: either sign explains the readings. "
+                f"only the magnitude of M between {pair.windings[0]} and {pair.windings[1]} is known: either sign "
+                "explains the readings. "
                 "Two readings in series, one way and the other, or a kick, would tell"
             )
             yield Finding("note", "sign", text)
@@ -102,7 +103,7 @@ def _side(q: Quantity) -> str:
 def _losses(head: Headline) -> Iterator[Finding]:
     """What open mutual resistances do to k."""
     main, names = head.joint.main, head.joint.names
-    for k, shared in enumerate(main.shared):
+    for shared in main.shared:
         group = head.group or 0
         measure = pair_measures(main.unknowns, names, group, shared.i, shared.j).coupling
         alone, _ = main.main.bounds.interval(measure), ""
@@ -120,8 +121,8 @@ def _losses(head: Headline) -> Iterator[Finding]:
                 f"{whole.lower:.4g} to {whole.upper:.4g}"
             )
         else:
-            ends = [abs(float(measure.value(main.corner(k, part).theta))) for part in (1.0, -1.0)]
-            low, high = min([whole.lower, *ends]), min(max([whole.upper, *ends]), 1.0)
+            most = main.over_shared(measure, alone, 1.0)[0]
+            low, high = most.lower, most.upper
             text = (
                 f"losses that {pair} may share (core, shield, a plate nearby) are not told from M by these readings; "
                 f"taken as at most {main.part:g} of sqrt(R1 R2) (shared_loss), k lies in {whole.lower:.4g} to "

@@ -23,6 +23,8 @@ Real = NDArray[np.float64]
 # Couplings tried for pairs that no open-circuit reading shows.
 TRIED = (0.5, 0.95, 0.1)
 _SIGN_PATTERNS_UP_TO = 3
+_UNEVEN = (5.0, 0.2)
+_UNEVEN_UP_TO = 2
 
 
 @dataclass(frozen=True)
@@ -52,23 +54,17 @@ def make_start(hints: Sequence[Hints], windings: int, groups: int, omegas: tuple
     read = _losses_read(hints, windings, len(omegas))
     shape = Unknowns(windings, groups, omegas, read, np.ones(0))
     sets = [_inductances(hints, g, shape) for g in range(groups)]
-    typical = _typical(hints)
-    blocks: list[list[Real]] = []
-    scales = []
-    for diagonal, couplings in sets:
-        known = np.where(np.isnan(diagonal), _fill(diagonal, typical), diagonal)
-        root = np.sqrt(known[shape.first] * known[shape.second])
-        scales.append(root)
-        blocks.append([root * kappa for kappa in couplings])
-    own = np.sqrt(np.mean([s[shape.first == shape.second] ** 2 for s in scales], axis=0))
+    scales = [tries[0][shape.first, shape.second] for tries in sets]
+    own = np.sqrt(np.mean([np.diag(tries[0]) ** 2 for tries in sets], axis=0))
     starts, r_scales = [], []
     for f, omega in enumerate(omegas):
         start, scale = _resistances(hints, f, omega, own, shape, np.array(read[f]))
         starts.append(start)
         r_scales.append(scale)
     unknowns = Unknowns(windings, groups, omegas, read, np.concatenate([*scales, *r_scales]))
-    tries = max(len(b) for b in blocks)
-    thetas = [np.concatenate([*(b[k % len(b)] for b in blocks), *starts]) for k in range(tries)]
+    blocks = [[matrix[shape.first, shape.second] for matrix in tries[1:]] for tries in sets]
+    most = max(len(b) for b in blocks)
+    thetas = [np.concatenate([*(b[k % len(b)] for b in blocks), *starts]) for k in range(most)]
     return Start(unknowns, thetas)
 
 
@@ -115,30 +111,50 @@ def _equations(hints: Sequence[Hints], shape: Unknowns, chosen: str, number: int
     return np.concatenate(rows), np.concatenate(right)
 
 
-def _inductances(hints: Sequence[Hints], group: int, shape: Unknowns) -> tuple[Real, list[Real]]:
-    """Self-inductances (n,), nan where nothing shows them, and couplings (T,) to try (1 on the diagonal)."""
+def _inductances(hints: Sequence[Hints], group: int, shape: Unknowns) -> list[Real]:
+    """Natural sizes as a matrix (n, n), then matrices to start from."""
     rows, right = _equations(hints, shape, "inductance", group)
     diagonal = shape.first == shape.second
-    rough = np.full(shape.windings, np.nan)
+    rough = _rough(rows, right, diagonal)
+    known = np.where(np.isnan(rough), _fill(rough, _typical(hints)), rough)
+    solution, shown = _least_norm(rows, right, known, shape)
+    own = np.where(shown[diagonal] & (solution[diagonal] > 0), solution[diagonal], known)
+    tries = [np.sqrt(np.outer(own, own))]
+    # A sum of two inductances says little of either: it is also split unevenly, one way and the other.
+    summed = np.flatnonzero(~shown[diagonal] & (np.abs(rows[:, diagonal]).sum(axis=0) > 0))
+    for factor, winding in [(1.0, 0), *product(_UNEVEN, summed[:_UNEVEN_UP_TO])]:
+        weight = known.copy()
+        weight[winding] *= factor
+        solution, shown = _least_norm(rows, right, weight, shape)
+        positive = solution[diagonal] > 0
+        each = np.where(positive & (shown[diagonal] | (factor != 1.0)), solution[diagonal], known)
+        root = np.sqrt(np.outer(each, each))[shape.first, shape.second]
+        kappa = np.where(shown, solution, np.nan) / root
+        tries += [shape.symmetric(root * filled) for filled in _tries(kappa, diagonal)]
+    return tries
+
+
+def _rough(rows: Real, right: Real, diagonal: NDArray[np.bool_]) -> Real:
+    """Rough self-inductances (n,): a winding's own reading, or its share of those it is part of; nan where none."""
+    rough = np.full(int(diagonal.sum()), np.nan)
     for coefficients, value in zip(rows, right, strict=True):
         here = np.abs(coefficients[diagonal]) > 0.5
         share = abs(value) / max(here.sum(), 1)
         rough[here] = np.fmax(np.where(share > 0, share, np.nan), np.where(here.sum() == 1, np.nan, rough[here]))
-    known = np.where(np.isnan(rough), _fill(rough, _typical(hints)), rough)
+    return rough
+
+
+def _least_norm(rows: Real, right: Real, known: Real, shape: Unknowns) -> tuple[Real, NDArray[np.bool_]]:
+    """Least-norm solution (T,) in natural sizes of the open-circuit equations, and which entries they determine."""
     root = np.sqrt(known[shape.first] * known[shape.second])
-    solution = np.full(shape.entries, np.nan)
-    if len(rows):
-        scaled = rows * root
-        size = np.maximum(np.abs(scaled).max(axis=1), 1e-300)
-        u, s, vt = np.linalg.svd(scaled / size[:, None])
-        rank = int(np.sum(s > 1e-8 * s.max(initial=0.0)))
-        fitted = vt[:rank].T @ ((u[:, :rank].T @ (right / size)) / s[:rank]) if rank else np.zeros(shape.entries)
-        shown = np.sum(vt[rank:] ** 2, axis=0) < 1e-12
-        solution = np.where(shown, fitted * root, np.nan)
-    own = np.where(solution[diagonal] > 0, solution[diagonal], rough)
-    filled = np.where(np.isnan(own), _fill(own, _typical(hints)), own)
-    kappa = solution / np.sqrt(filled[shape.first] * filled[shape.second])
-    return own, _tries(kappa, diagonal)
+    if not len(rows):
+        return np.zeros(shape.entries), np.zeros(shape.entries, dtype=bool)
+    scaled = rows * root
+    size = np.maximum(np.abs(scaled).max(axis=1), 1e-300)
+    u, s, vt = np.linalg.svd(scaled / size[:, None])
+    rank = int(np.sum(s > 1e-8 * s.max(initial=0.0)))
+    fitted = vt[:rank].T @ ((u[:, :rank].T @ (right / size)) / s[:rank]) if rank else np.zeros(shape.entries)
+    return fitted * root, np.sum(vt[rank:] ** 2, axis=0) < 1e-12
 
 
 def _tries(kappa: Real, diagonal: NDArray[np.bool_]) -> list[Real]:

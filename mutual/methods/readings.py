@@ -12,7 +12,7 @@ from numpy.typing import NDArray
 from mutual.circuit import Compiled, Response, compile_hookups, solve
 from mutual.device import Device, Hookup
 from mutual.errors import RefusedInput
-from mutual.evidence import Hints, Prediction, Source
+from mutual.evidence import NUMBER, Hints, Prediction, Source
 from mutual.methods.errors_of_instruments import SHOWN as AS_SHOWN
 from mutual.methods.errors_of_instruments import Choice, Effects, add_impedance_errors, standard
 from mutual.methods.scatter import Scatter, Shown, scatter_of
@@ -109,6 +109,7 @@ class ReadingsEvidence:
         scatter = scatter_of(shown)
         self._effects = Effects()
         self.values, self.noise, self.freedom = scatter.compared, scatter.noise, scatter.freedom
+        self.noise = np.maximum(self.noise, self._as_numbers(shown, scatter))
         self.rounding = np.zeros(len(shown))
         self.labels = [f"{s.accuracy.name} noise" for s in shown]
         for v, s in enumerate(shown):
@@ -123,6 +124,15 @@ class ReadingsEvidence:
                     key = ("noise", correlated.values[0], k)
                     self._effects.add(v, key, self.labels[v], AS_SHOWN, float(size), False, correlated.freedom)
         self._tie_sources = self._ties()
+
+    def _as_numbers(self, shown: Sequence[Shown], scatter: Scatter) -> Real:
+        """Least noise (m,) of numbers of which nothing is stated: nine digits of their impedance, even for a nil."""
+        rough, omega = np.nan_to_num(self._rough)[self._case], self._omega[self._case]
+        size = np.hypot(rough[:, 0], omega * rough[:, 1])
+        units = np.array([SHOWN[s.column].unit for s in shown])
+        size = np.select([units == "ohm", units == "H"], [size, size / np.where(omega > 0, omega, 1.0)], 1.0)
+        bare = np.array([not s.accuracy.stated for s in shown]) & (scatter.step == 0) & (scatter.noise == 0)
+        return np.where(bare, NUMBER * size, 0.0)
 
     def _add_shown(self, v: int, shown: Shown, scatter: Scatter) -> None:
         """Counts and the display step: errors of the number as shown."""

@@ -89,8 +89,10 @@ def scatter_of(shown: Sequence[Shown]) -> Scatter:
     size = np.where(reciprocal, np.maximum(raw**2, 1e-300), 1.0)
     freedom = np.full(m, inf)
     together = []
+    mean = np.array([raw[group == g].mean() for g in range(len(numbers))])[group] if m else raw
     for values, relative, degrees in _from_repeats(shown):
-        scale = _relative_to(shown, values) / size[list(values)]
+        # At the mean of the repeats, not at each reading: that would weigh the small ones more (Peelle's puzzle).
+        scale = _relative_to(shown, values, mean) / size[list(values)]
         covariance = relative * scale[:, None] * scale[None, :]
         noise[list(values)] = np.sqrt(np.diag(covariance)) * size[list(values)]
         freedom[list(values)] = degrees
@@ -106,10 +108,10 @@ def scatter_of(shown: Sequence[Shown]) -> Scatter:
     return Scatter(compared, noise / size, step / size, freedom, frozen, group.astype(np.int64), together)
 
 
-def _relative_to(shown: Sequence[Shown], values: Sequence[int]) -> Real:
-    """What scatter is relative to: the value for inductances and resistances, 1 for what may be near zero."""
+def _relative_to(shown: Sequence[Shown], values: Sequence[int], mean: Real) -> Real:
+    """What scatter is relative to: the mean for inductances and resistances, 1 for what may be near zero."""
     plain = [SHOWN[shown[v].column].unit in ("H", "ohm") and not SHOWN[shown[v].column].transfer for v in values]
-    return np.array([abs(shown[v].value) if p else 1.0 for v, p in zip(values, plain, strict=True)])
+    return np.array([abs(mean[v]) if p else 1.0 for v, p in zip(values, plain, strict=True)])
 
 
 def _from_repeats(shown: Sequence[Shown]) -> list[tuple[tuple[int, ...], Real, float]]:
@@ -133,8 +135,9 @@ def _from_repeats(shown: Sequence[Shown]) -> list[tuple[tuple[int, ...], Real, f
         if len(group) < 2:
             continue
         values = np.array([[shown[v].value for v in members] for members in group])
-        scale = np.abs(values.mean(axis=0))
-        scale = np.where(_relative_to(shown, group[0]) == 1.0, 1.0, np.maximum(scale, 1e-300))
+        mean = np.zeros(len(shown))
+        mean[list(group[0])] = values.mean(axis=0)
+        scale = np.maximum(_relative_to(shown, group[0], mean), 1e-300)
         deviation = (values - values.mean(axis=0)) / scale
         squares[key] = squares.get(key, np.zeros((len(key[1]),) * 2)) + deviation.T @ deviation
         degrees[key] += len(group) - 1
