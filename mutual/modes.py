@@ -70,8 +70,12 @@ def _local(explanation: Explanation, names: list[str], group: int, i: int, j: in
         if posterior.determined(gradient) and not posterior.feigned(measure.value, standard):
             value = float(measure.value(theta))
             spread = posterior.spread(posterior.contributions(gradient))
-            upper, lower = spread.below(value), spread.below(-value)
-            return float(np.log(max(upper, 1e-300)) - np.log(max(lower, 1e-300)))
+            # The prior of the coupling ends at +-1: what lies beyond counts for neither sign.
+            most = 1.0 if measure.kind == "coupling" else np.inf
+            nearer = spread.below(most - abs(value)) - spread.below(-abs(value))
+            farther = spread.below(-abs(value)) - spread.below(-abs(value) - most)
+            odds = np.log(max(nearer, 1e-300)) - np.log(max(farther, 1e-300)) if nearer > 0 else _CERTAIN
+            return float(odds if value >= 0 else -odds)
     # Not determined: what stands between here and the other sign is chi-square where M is nil.
     best = explanation.main.best
     coupling = next(iter(_measures(explanation, names, group, i, j)))

@@ -1,39 +1,25 @@
-"""Which leads are alike: probability per pair, verdicts, dots for the device, and its arrangement."""
+"""Which leads are alike: probability and verdict per pair, and dots or starts for the device."""
 
 from __future__ import annotations
 
-from collections.abc import Sequence
-from dataclasses import dataclass
-from itertools import combinations, product
-from typing import Protocol
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, field
+from itertools import combinations
 
 import numpy as np
 from numpy.typing import NDArray
 
+from mutual import arrangement
 from mutual.device import Device
-from mutual.result import Arrangement, Finding, Triple
+from mutual.result import Arrangement, Finding
+from mutual.signs import Pair, SignTerm, Sum, Weighing, free_parts, gathered, tied_part
 
 Real = NDArray[np.float64]
+Sides = tuple[tuple[str, ...], tuple[str, ...]]
 
 ODDS = 1000.0
-_CERTAIN = 700.0
-_MOST_JOINT = 14
-
-
-class SignTerm(Protocol):
-    """A seen sign of a sum of entries of the inductance matrix (see `methods.kick.Kick`)."""
-
-    @property
-    def terms(self) -> tuple[tuple[int, int, int], ...]:
-        """(i, j, sign) of each entry."""
-
-    @property
-    def seen(self) -> int:
-        """+1 or -1."""
-
-    @property
-    def misread(self) -> float:
-        """Probability of being wrong."""
+# More windings on one limb would be too many patterns to enumerate (2^17 take a second).
+MOST_ON_ONE_LIMB = 18
 
 
 @dataclass(frozen=True)
@@ -46,13 +32,22 @@ class Signs:
         Symmetric, 1 on the diagonal.
     alone : (n, n) float
         The same without the declared arrangement.
+    holds : mapping of (i, j, k) to float
+        Probability, without the declaration, of the sign product that it asks of that triple.
+    reversed : float or None
+        Probability that the kick meter's sense was reversed throughout; None where nothing was kicked.
+    disputed : tuple of (i, j)
+        Pairs of which numbers say one sign and kicks the other, each at odds of 1000 to 1 or better.
     """
 
     same: Real
     alone: Real
+    holds: Mapping[arrangement.Indices, float] = field(default_factory=dict)
+    reversed: float | None = None
+    disputed: tuple[Pair, ...] = ()
 
     def verdict(self, i: int, j: int) -> str:
-        """"same" or "opposite" at odds of 1000 to 1 or better, else "undetermined"."""
+        """Word "same" or "opposite" at odds of 1000 to 1 or better, else "undetermined"."""
         return verdict(float(self.same[i, j]))
 
 
@@ -66,82 +61,44 @@ def verdict(probability: float) -> str:
 def combine(device: Device, log_odds: Real, kicks: Sequence[SignTerm], reversed_chance: float) -> Signs:
     """Join what numbers and kicks say of the signs, with the declared arrangement.
 
+    A declaration that the verdicts without it contradict is not used: `same` is then `alone`.
+
     Parameters
     ----------
     device : Device
     log_odds : (n, n) float
-        ln P(M > 0)/P(M < 0) from the numeric evidence, prior flat in the signed coupling.
+        ln P(M > 0)/P(M < 0) from the numeric evidence, prior flat in the signed coupling; pairs count as independent.
     kicks : sequence of SignTerm
     reversed_chance : float
         Prior probability that the meter's sense was reversed in all kicks.
     """
-    alone = _probabilities(device, log_odds, kicks, reversed_chance, "free")
-    if device.arrangement == "free" or len(device.windings) < 3:
-        return Signs(alone, alone)
-    return Signs(_probabilities(device, log_odds, kicks, reversed_chance, device.arrangement), alone)
-
-
-def _probabilities(
-    device: Device, log_odds: Real, kicks: Sequence[SignTerm], reversed_chance: float, arrangement: str
-) -> Real:
     n = len(device.windings)
-    pairs = list(combinations(range(n), 2))
-    same = np.eye(n)
-    for group in _joint_groups(n, pairs, kicks, arrangement):
-        patterns = _patterns(n, group, arrangement)
-        index = {pair: k for k, pair in enumerate(group)}
-        weight = np.clip([log_odds[p] for p in group], -_CERTAIN, _CERTAIN) / 2 @ patterns
-        total = np.full(patterns.shape[1], -np.inf)
-        for sense, chance in ((1, 1 - reversed_chance), (-1, reversed_chance)):
-            with np.errstate(divide="ignore"):
-                likelihood = weight + np.log(chance)
-            for kick in kicks:
-                if all(i == j or (i, j) in index for i, j, _ in kick.terms):
-                    likelihood = likelihood + _log_likelihood(kick, sense, patterns, index)
-            total = np.logaddexp(total, likelihood)
-        total = np.exp(total - total.max())
-        chance_of = total / total.sum()
-        for k, (i, j) in enumerate(group):
-            same[i, j] = same[j, i] = float(np.sum(chance_of[patterns[k] > 0]))
-    return same
+    sums = gathered(kicks)
+    free = Weighing(free_parts(n, log_odds, sums), reversed_chance)
+    same = alone = free.same(n)
+    asked, holds = arrangement.asked_product(device), {}
+    if asked is not None:
+        holds = {t: (1 + asked * free.mean(list(combinations(t, 2)))) / 2 for t in combinations(range(n), 3)}
+        if n <= MOST_ON_ONE_LIMB and not arrangement.contradicted(device, _known(alone)):
+            same = Weighing([tied_part(n, log_odds, sums, asked)], reversed_chance).same(n)
+    disputed = tuple(_disputed(log_odds, sums, -1 if free.reversed > 0.5 else 1))
+    return Signs(same, alone, holds, free.reversed if kicks else None, disputed)
 
 
-def _log_likelihood(kick: SignTerm, sense: int, patterns: Real, index: dict[tuple[int, int], int]) -> Real:
-    """Of a seen deflection for each pattern; where terms disagree in sign either deflection is as likely."""
-    signs = np.array([s * (patterns[index[i, j]] if i != j else np.ones(patterns.shape[1])) for i, j, s in kick.terms])
-    agreed = np.where(np.all(signs > 0, axis=0), 1, np.where(np.all(signs < 0, axis=0), -1, 0))
-    right, wrong = np.log1p(-kick.misread), np.log(max(kick.misread, 1e-12))
-    expected = agreed * sense
-    return np.where(expected == 0, np.log(0.5), np.where(expected == kick.seen, right, wrong))
+def _known(probabilities: Real) -> arrangement.Known:
+    """Signs (n, n) by verdict."""
+    alike, unlike = probabilities >= ODDS / (1 + ODDS), probabilities <= 1 / (1 + ODDS)
+    return alike.astype(np.int8) - unlike.astype(np.int8)
 
 
-def _joint_groups(
-    n: int, pairs: list[tuple[int, int]], kicks: Sequence[SignTerm], arrangement: str
-) -> list[list[tuple[int, int]]]:
-    """Pairs whose signs must be weighed together.
-
-    All of them where the arrangement ties them, or where kicks share the chance that the meter is
-    reversed; a kick whose sum has several terms joins its pairs.
-    """
-    if arrangement != "free":
-        return [pairs]
-    joined = sorted({(i, j) for kick in kicks for i, j, _ in kick.terms if i != j})
-    if len(joined) > _MOST_JOINT:
-        # Too many to enumerate: the chance of a reversed meter is then weighed for each pair alone.
-        return [[p] for p in pairs]
-    return ([joined] if joined else []) + [[p] for p in pairs if p not in joined]
-
-
-def _patterns(n: int, group: list[tuple[int, int]], arrangement: str) -> Real:
-    """Sign patterns (pairs, patterns) that the arrangement allows."""
-    if arrangement == "one limb":
-        windings = np.array(list(product((1.0, -1.0), repeat=n - 1)))
-        windings = np.column_stack([np.ones(len(windings)), windings])
-        return np.array([windings[:, i] * windings[:, j] for i, j in group])
-    patterns = np.array(list(product((1.0, -1.0), repeat=len(group)))).T
-    if arrangement == "three-phase" and n == 3:
-        patterns = patterns[:, np.prod(patterns, axis=0) < 0]
-    return patterns
+def _disputed(log_odds: Real, sums: Sequence[Sum], sense: int) -> Iterator[Pair]:
+    """Pairs whose numbers and kicks contradict beyond doubt, the meter's sense being what it most likely is."""
+    for total in sums:
+        if len(total.terms) == 1 and total.pairs:
+            (pair,) = total.pairs
+            kicked, numeric = sense * (total.up - total.down), float(log_odds[pair])
+            if kicked * numeric < 0 and min(abs(kicked), abs(numeric)) >= np.log(ODDS):
+                yield pair
 
 
 @dataclass(frozen=True)
@@ -155,7 +112,7 @@ class Marks:
     findings : tuple of Finding
     """
 
-    dots: tuple[tuple[str, ...], tuple[str, ...]] | None
+    dots: Sides | None
     arrangement: Arrangement
     findings: tuple[Finding, ...] = ()
 
@@ -171,61 +128,57 @@ def pair_dots(device: Device, i: int, j: int, word: str) -> tuple[tuple[str, str
 
 
 def marks(device: Device, signs: Signs) -> Marks:
-    """Dots for the whole device where one dot each can serve, else starts and finishes of three phases."""
-    n = len(device.windings)
-    names = [w.name for w in device.windings]
-    sign = {p: _sign(signs.verdict(*p)) for p in combinations(range(n), 2)}
-    free = {p: _sign(verdict(float(signs.alone[p]))) for p in combinations(range(n), 2)}
-    triples = []
-    for i, j, k in combinations(range(n), 3):
-        factors = (free[i, j], free[j, k], free[i, k])
-        triples.append(Triple((names[i], names[j], names[k]), None if 0 in factors else int(np.prod(factors))))
-    products = [t.sign_product for t in triples]
-    dots = None
-    if n > 1 and 0 not in sign.values() and -1 not in products:
-        dots = _sides(device, [1, *(sign[0, i] for i in range(1, n))])
-    starts = None
-    if n == 3 and products == [-1]:
-        starts = _sides(device, [1, -free[0, 1], -free[0, 2]])
-    findings = _contradictions(device, triples)
-    text = _text(device, products, dots is not None, starts is not None)
-    return Marks(dots, Arrangement(device.arrangement, tuple(triples), starts, text), findings)
+    """Dots for the whole device where one dot each can serve, else starts and finishes of its phases."""
+    known, alone = _known(signs.same), _known(signs.alone)
+    groups = arrangement.phases(known)
+    dots = starts = None
+    if groups is not None and len(known) > 1:
+        # Between like ends of windings on different limbs M is negative.
+        turned = [int(known[0, j]) * (1 if j in groups[0] else -1) for j in range(1, len(known))]
+        sides = _sides(device, [1, *turned])
+        if len(groups) > 1:
+            starts = sides
+        elif arrangement.asked_product(device) != -1:
+            dots = sides
+    follow = [p for p in combinations(range(len(known)), 2) if known[p] and not alone[p]]
+    text = arrangement.describe(device, known, follow)
+    found = Arrangement(device.arrangement, arrangement.triples(device, alone), starts, text)
+    return Marks(dots, found, (*arrangement.findings(device, alone, signs.holds), *_findings(device, signs)))
 
 
-def _sign(word: str) -> int:
-    return {"same": 1, "opposite": -1}.get(word, 0)
-
-
-def _sides(device: Device, orientation: Sequence[int]) -> tuple[tuple[str, ...], tuple[str, ...]]:
+def _sides(device: Device, orientation: Sequence[int]) -> Sides:
     windings = device.windings
     marked = tuple(w.first if s > 0 else w.second for w, s in zip(windings, orientation, strict=True))
     return marked, tuple(w.second if s > 0 else w.first for w, s in zip(windings, orientation, strict=True))
 
 
-def _contradictions(device: Device, triples: Sequence[Triple]) -> tuple[Finding, ...]:
-    wrong = {"one limb": -1, "three-phase": 1}.get(device.arrangement)
-    found = []
-    for triple in triples:
-        if wrong is not None and triple.sign_product == wrong and (wrong == -1 or len(device.windings) == 3):
-            text = (
-                f"declared {device.arrangement!r}, but the signs of M between {', '.join(triple.windings)} multiply to "
-                f"{wrong:+d}, which that arrangement cannot give; exchanging leads does not change it. "
-                "The declaration is wrong, or one of these readings is"
-            )
-            found.append(Finding("refusal", "arrangement", text))
-    return tuple(found)
-
-
-def _text(device: Device, products: Sequence[int | None], dotted: bool, phased: bool) -> str:
-    if len(device.windings) < 3:
-        return "two windings: one dot each serves" if dotted else "the signs are not known yet"
-    if phased:
-        return (
-            "the signs multiply to -1, as those of three phase windings (or of three limbs of one core) do: no single "
-            "dots exist, starts and finishes are given instead"
+def _findings(device: Device, signs: Signs) -> Iterator[Finding]:
+    """What the kicks are worth beside the rest."""
+    if arrangement.asked_product(device) and len(device.windings) > MOST_ON_ONE_LIMB:
+        text = (
+            f"the declared {device.arrangement!r} is not used: with more than {MOST_ON_ONE_LIMB} windings there are "
+            "too many sign patterns to weigh. Read or kick every pair that must be known, or leave windings out"
         )
-    if -1 in products:
-        return "some triples multiply to -1: the windings do not all enclose one flux path, and no single dots exist"
-    if dotted:
-        return "all signs agree with one dot on each winding"
-    return "the signs are not all known yet"
+        yield Finding("caution", "arrangement", text)
+    for i, j in signs.disputed:
+        a, b = device.windings[i], device.windings[j]
+        text = (
+            f"readings and kicks say opposite things of {a.name} and {b.name}, each at odds of 1000 to 1 or better: "
+            "leads were exchanged between the two tests, or one of them was made on another winding"
+        )
+        yield Finding("refusal", "kick disagrees", text)
+    chance = signs.reversed
+    if chance is None or verdict(chance) == "opposite":
+        return
+    if verdict(chance) == "same":
+        text = (
+            "the kicks, taken together, show the voltmeter's sense reversed throughout; the verdicts take that into "
+            "account. Exchange its leads before the next kick"
+        )
+    else:
+        text = (
+            f"whether the voltmeter's sense was reversed in all kicks is open (probability {chance:.2g}), and a kick "
+            "cannot be surer than that. Kick several times with the voltmeter across the fed winding itself, plus to "
+            "plus ('sense' as 'across'): that tells"
+        )
+    yield Finding("caution", "sense", text)
