@@ -72,10 +72,14 @@ def test_gum_h2_values_and_uncertainties(as_read: str) -> None:
 
 
 def test_gum_h2_correlations() -> None:
-    """JCGM 100:2008, H.2.4, table H.4: r(R, X) -0.588, r(R, Z) -0.485, r(X, Z) 0.993."""
+    """JCGM 100:2008, H.2.4, table H.4: r(R, X) -0.588, r(R, Z) -0.485, r(X, Z) 0.993.
+
+    The last is 0.99251 before it is rounded, and 0.99246 where |Z| is propagated linearly from R and X as here, not
+    averaged over the sets: it is compared to both, since the two straddle the rounding.
+    """
     _, _, correlation = impedance(explain(collect([recording(*sets("resistance and inductance"))]), 0.95))
-    found = [correlation[0, 1], correlation[0, 2], correlation[1, 2]]
-    assert found == pytest.approx([-0.588, -0.485, 0.993], abs=0.0005)
+    assert correlation[0, 1:] == pytest.approx([-0.588, -0.485], abs=0.0005)
+    assert correlation[1, 2] == pytest.approx(0.99251, abs=0.0001)
 
 
 @pytest.mark.parametrize("as_read", AS_READ)

@@ -1,33 +1,41 @@
 """Slips that happen at a bench: what a row of readings may really have been.
 
-Each alternative is the row as it should have been written down. Which slips are likely is
-common practice, no source.
+Which slips are likely is common practice, no source. Each one says how rare it is, and how it explains what was
+typed where the circuit does not: both count beside chi-square, as -2 ln of a probability.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
 from dataclasses import dataclass, replace
+from math import log
 
-from mutual.device import Device, Hookup, check_hookup
-from mutual.errors import RefusedInput
+from mutual.device import Device
+from mutual.methods.rewired import Rewiring, Shows
 from mutual.methods.shown import SHOWN
 from mutual.recording.model import Row, Value
 
-_FACTORS = {
-    1e3: "a thousand times too small (a prefix slip)",
-    1e-3: "a thousand times too large (a prefix slip)",
-    1e6: "a million times too small (a prefix slip)",
-    1e-6: "a million times too large (a prefix slip)",
-    10.0: "ten times too small (a slip of the decimal point)",
-    0.1: "ten times too large (a slip of the decimal point)",
-}
+_PREFIXES = {1e3: "a thousand times too small", 1e6: "a million times too small"}
+_PREFIXES |= {1e-3: "a thousand times too large", 1e-6: "a million times too large"}
+_POINTS = {10.0: "ten times too small", 0.1: "ten times too large"}
 _PARALLEL = {
     "inductance": "parallel inductance",
     "resistance": "parallel resistance",
     "parallel inductance": "inductance",
     "parallel resistance": "resistance",
 }
+# A number typed by an unknown slip may be anything within six decades: the width of its prior, beside its size.
+_DECADES = 6 * log(10)
+# Numbers without digits are compared to this part of themselves.
+_DIGIT = 1e-6
+
+
+@dataclass(frozen=True)
+class Moved:
+    """Rows (by position) at which windings stood differently; which winding moved, or None for any of them."""
+
+    rows: frozenset[int]
+    winding: int | None = None
 
 
 @dataclass(frozen=True)
@@ -38,148 +46,167 @@ class Alternative:
     ----------
     text : str
         The slip in words, as a clause.
-    rows : mapping as a tuple of (position, Row or None)
+    position : int
+        The row that it is about.
+    rows : tuple of (position, Row or None)
         Rows by their position among all, as they should have been; None takes the row out.
-    penalty : float
-        What its rarity and freedom count for beside chi-square.
+    rarity : float
+        -2 ln of its odds beside the commonest slips.
+    typed : float
+        -2 ln of the probability density of what was typed, as far as the readings if mended do not say it.
+    moved : Moved or None
+        Where windings stood differently; `rows` then says what is left to answer from.
     """
 
     text: str
+    position: int
     rows: tuple[tuple[int, Row | None], ...]
-    penalty: float = 0.0
+    rarity: float = 0.0
+    typed: float = 0.0
+    moved: Moved | None = None
 
 
-def of_hookup(device: Device, row: Row) -> Iterator[tuple[str, Hookup, float]]:
-    """Other hookups that the row may really have had."""
-    hookup = row.hookup
-    seen = {_canonical(hookup)}
-    for text, other, penalty in _hookups(device, hookup):
-        key = _canonical(other)
-        if key in seen:
-            continue
-        seen.add(key)
-        try:
-            check_hookup(device, other)
-        except RefusedInput:
-            continue
-        yield text, other, penalty
+class Slips:
+    """The likely slips of a set of rows.
+
+    Parameters
+    ----------
+    device : Device
+    rows : sequence of Row
+    names : sequence of str
+        How texts name each row.
+    """
+
+    def __init__(self, device: Device, rows: Sequence[Row], names: Sequence[str]) -> None:
+        self.device, self.rows, self.names = device, list(rows), list(names)
+        self._rewiring = Rewiring(device)
+
+    def of_row(self, position: int) -> Iterator[Alternative]:
+        """All likely slips of one row that say what the row should have been."""
+        row = self.rows[position]
+        for other in self._rewiring.others(row.hookup, _shows(row)):
+            text = f"{other.text}: it was {other.hookup}"
+            yield Alternative(text, position, ((position, replace(row, hookup=other.hookup)),))
+        for name in columns(row):
+            factors = _POINTS if SHOWN[name].unit in ("1", "rad") else {**_PREFIXES, **_POINTS}
+            for factor, words in factors.items():
+                why = "the decimal point" if factor in _POINTS else "a wrong prefix"
+                text = f"the {name} was written {words} ({why})"
+                typed = 2 * log(factor) * (1 if SHOWN[name].reciprocal else -1)
+                rarity = 0.0 if factor in (1e3, 1e-3) else 4.0
+                yield Alternative(text, position, ((position, _scaled(row, name, factor)),), rarity, typed)
+        if _turns(row):
+            text = f"the meter showed the {_other_equivalent(row)} equivalent"
+            yield Alternative(text, position, ((position, _turned(row)),), 1.0, _typed_otherwise(row))
+
+    def everywhere(self) -> Iterator[Alternative]:
+        """Slips made in every row."""
+        turning = [k for k, row in enumerate(self.rows) if row.frequency and set(columns(row)) & set(_PARALLEL)]
+        if not any(_turns(self.rows[k]) for k in turning):
+            return
+        kinds = {_other_equivalent(self.rows[k]) for k in turning}
+        if len(turning) > 1 and len(kinds) == 1:
+            rows = tuple((k, _turned(self.rows[k])) for k in turning)
+            typed = sum(_typed_otherwise(self.rows[k]) for k in turning)
+            text = f"in every row the meter showed the {kinds.pop()} equivalent"
+            yield Alternative(text, turning[0], rows, 1.0, typed)
+
+    def twice(self, position: int) -> Iterator[Alternative]:
+        """Values that stand in another row too: typed twice, so this row tells nothing of them."""
+        row = self.rows[position]
+        done = set()
+        for k, other in enumerate(self.rows):
+            same = tuple(n for n in columns(row) if n in other.values and row.values[n].value == other.values[n].value)
+            if k == position or not same or same in done or self.alike(row, other):
+                continue
+            done.add(same)
+            all_of_it = len(same) == len(columns(row)) > 1
+            what = "its values are those" if all_of_it else f"its {' and '.join(same)} is that"
+            rest = {name: value for name, value in row.values.items() if name not in same}
+            left = replace(row, values=rest) if any(name in SHOWN for name in rest) else None
+            typed = sum(2 * log(_digit(row.values[n])) - _reciprocal(n, row.values[n]) for n in same)
+            text = f"{what} of {self.names[k]}, typed twice"
+            yield Alternative(text, position, ((position, left),), 3.0, typed)
+
+    def exchanged(self, first: int, second: int) -> Alternative | None:
+        """The values of two rows exchanged; None where that says nothing."""
+        a, b = self.rows[first], self.rows[second]
+        if set(a.values) != set(b.values) or a.values == b.values or self.alike(a, b):
+            return None
+        text = f"its values and those of {self.names[second]} were exchanged"
+        rows = ((first, replace(a, values=b.values)), (second, replace(b, values=a.values)))
+        return Alternative(text, first, rows, 4.0)
+
+    def moved_at(self, position: int) -> Alternative:
+        """The windings stood differently at one reading."""
+        text = "the windings stood differently at this reading (a coil moved), or it was misread"
+        return Alternative(text, position, ((position, None),), 1.0, moved=Moved(frozenset([position])))
+
+    def moved_from(self, position: int, winding: int, shows: Sequence[bool]) -> Alternative:
+        """A winding stood differently from one reading on; `shows` says on which rows its place bears."""
+        rows = [k for k in range(position, len(self.rows)) if shows[k]]
+        who = "the windings" if len(self.device.windings) == 2 else self.device.windings[winding].name
+        text = f"{who} stood differently from this reading on (a coil moved)"
+        gone = tuple((k, None) for k in rows)
+        return Alternative(text, position, gone, 2.0, moved=Moved(frozenset(rows), winding))
+
+    def unknown(self, position: int) -> Alternative:
+        """A slip that the program does not know."""
+        row = self.rows[position]
+        text = "this reading alone contradicts the others; none of the usual slips explains it"
+        typed = 0.0
+        for name in columns(row):
+            size = max(abs(row.values[name].value), 1e-300)
+            typed += 2 * log(_DECADES * size) - _reciprocal(name, row.values[name])
+        return Alternative(text, position, ((position, None),), 10.0, typed)
+
+    def alike(self, a: Row, b: Row) -> bool:
+        """Whether two rows must show the same."""
+        if (a.frequency, dict(a.point)) != (b.frequency, dict(b.point)):
+            return False
+        one, two = (self._rewiring.signature(row.hookup, _shows(row)) for row in (a, b))
+        return one == two and _shows(a) == _shows(b)
 
 
-def _hookups(device: Device, hookup: Hookup) -> Iterator[tuple[str, Hookup, float]]:
-    tied = hookup.tied
-    for a in range(len(tied)):
-        for b in range(a + 1, len(tied)):
-            (p, q), (r, s) = tied[a], tied[b]
-            rest = tuple(t for k, t in enumerate(tied) if k not in (a, b))
-            for one, two in (((p, s), (r, q)), ((p, r), (q, s))):
-                yield "two ties were exchanged", replace(hookup, tied=(one, two, *rest)), 0.0
-    for winding in device.windings:
-        turn = {winding.first: winding.second, winding.second: winding.first}
-        turned = Hookup(
-            _swapped(hookup.across, turn),
-            tuple(_swapped(t, turn) for t in tied),
-            None if hookup.sense is None else _swapped(hookup.sense, turn),
-        )
-        yield f"the leads of {winding.name} were exchanged", turned, 0.0
-    for k, tie in enumerate(tied):
-        rest = tuple(t for j, t in enumerate(tied) if j != k)
-        yield f"the tie {tie[0]}-{tie[1]} was left open", replace(hookup, tied=rest), 1.0
-    for winding in device.windings:
-        short = (winding.first, winding.second)
-        yield f"{winding.name} was shorted", replace(hookup, tied=(*tied, short)), 1.0
+def columns(row: Row) -> list[str]:
+    """Columns that are functions of an impedance."""
+    return [name for name in row.values if name in SHOWN]
 
 
-def _swapped(pair: tuple[str, str], turn: dict[str, str]) -> tuple[str, str]:
-    return turn.get(pair[0], pair[0]), turn.get(pair[1], pair[1])
+def _shows(row: Row) -> Shows:
+    kinds = {SHOWN[name].transfer for name in columns(row)}
+    return Shows(False in kinds, True in kinds)
 
 
-def _canonical(hookup: Hookup) -> tuple[object, ...]:
-    """Equal for hookups that are the same circuit seen the same way."""
-    parent: dict[str, str] = {}
-
-    def root(lead: str) -> str:
-        while parent.setdefault(lead, lead) != lead:
-            lead = parent[lead]
-        return lead
-
-    for a, b in hookup.tied:
-        parent[root(b)] = root(a)
-    nodes: dict[str, set[str]] = {}
-    for lead in list(parent):
-        nodes.setdefault(root(lead), set()).add(lead)
-    ties = frozenset(frozenset(n) for n in nodes.values())
-
-    def node(lead: str) -> frozenset[str]:
-        return next((n for n in ties if lead in n), frozenset([lead]))
-
-    across = (node(hookup.across[0]), node(hookup.across[1]))
-    if hookup.sense is None:
-        # An impedance is the same either way round.
-        return ties, frozenset(across)
-    sense = (node(hookup.sense[0]), node(hookup.sense[1]))
-    return ties, frozenset([(across, sense), (across[::-1], sense[::-1])])
+def _scaled(row: Row, name: str, factor: float) -> Row:
+    value = row.values[name]
+    step = None if value.step is None else value.step * factor
+    return replace(row, values={**row.values, name: Value(value.value * factor, step)})
 
 
-def of_row(device: Device, rows: Sequence[Row], position: int) -> Iterator[Alternative]:
-    """All likely slips of one row that say what the row should have been."""
-    row = rows[position]
-    columns = [name for name in row.values if name in SHOWN]
-    for text, hookup, penalty in of_hookup(device, row):
-        yield Alternative(text, ((position, replace(row, hookup=hookup)),), penalty)
-    for name in columns:
-        for factor, words in _FACTORS.items():
-            value = row.values[name]
-            step = None if value.step is None else value.step * factor
-            fixed = {**row.values, name: Value(value.value * factor, step)}
-            penalty = 0.0 if factor in (1e3, 1e-3) else 2.0
-            yield Alternative(f"the {name} is {words}", ((position, replace(row, values=fixed)),), penalty)
-    if any(name in _PARALLEL for name in columns) and row.frequency:
-        other = {_PARALLEL.get(name, name): value for name, value in row.values.items()}
-        meant = "parallel" if any(name in ("inductance", "resistance") for name in columns) else "series"
-        text = f"the meter showed the {meant} equivalent"
-        yield Alternative(text, ((position, replace(row, values=other)),), 1.0)
+def _turns(row: Row) -> bool:
+    """Whether series and parallel equivalent differ in what was read."""
+    return bool(row.frequency) and any(name in _PARALLEL for name in columns(row)) and len(columns(row)) > 1
 
 
-def of_two(rows: Sequence[Row], first: int, second: int) -> Iterator[Alternative]:
-    """Slips between two rows: their values exchanged."""
-    a, b = rows[first], rows[second]
-    if set(a.values) != set(b.values) or a.hookup == b.hookup:
-        return
-    text = f"its values and those of row {b.number} were exchanged"
-    yield Alternative(text, ((first, replace(a, values=b.values)), (second, replace(b, values=a.values))), 1.0)
+def _other_equivalent(row: Row) -> str:
+    return "parallel" if any(name in ("inductance", "resistance") for name in columns(row)) else "series"
 
 
-def unexplained(device: Device, rows: Sequence[Row], position: int) -> Iterator[Alternative]:
-    """Slips that leave open what the row should have been: the reading tells nothing then."""
-    row = rows[position]
-    twins = [
-        other.number
-        for k, other in enumerate(rows)
-        if k != position and other.hookup != row.hookup and other.frequency == row.frequency and _same_values(row, other)
-    ]
-    gone = ((position, None),)
-    if twins:
-        yield Alternative(f"its value is that of row {twins[0]}, typed twice", gone, 0.0)
-    if len(_involved(device, row.hookup)) > 1:
-        yield Alternative("the windings stood differently at this reading (a coil moved)", gone, 10.0)
-    yield Alternative("this reading alone contradicts the others, by no slip that the program knows", gone, 14.0)
+def _turned(row: Row) -> Row:
+    return replace(row, values={_PARALLEL.get(name, name): value for name, value in row.values.items()})
 
 
-def _same_values(row: Row, other: Row) -> bool:
-    shared = [n for n in row.values if n in SHOWN and n in other.values]
-    return bool(shared) and all(row.values[n].value == other.values[n].value for n in shared)
+def _typed_otherwise(row: Row) -> float:
+    """Change of -2 ln of the density when a value is compared as its reciprocal, or no longer."""
+    new = _turned(row)
+    return sum(_reciprocal(n, v) for n, v in new.values.items()) - sum(_reciprocal(n, v) for n, v in row.values.items())
 
 
-def _involved(device: Device, hookup: Hookup) -> set[str]:
-    """Windings that a lead of the hookup belongs to."""
-    leads = {*hookup.across, *(x for t in hookup.tied for x in t), *(hookup.sense or ())}
-    return {w.name for w in device.windings if w.first in leads or w.second in leads}
+def _reciprocal(name: str, value: Value) -> float:
+    """-2 ln of the derivative of what is compared by what was typed."""
+    return 4 * log(max(abs(value.value), 1e-300)) if name in SHOWN and SHOWN[name].reciprocal else 0.0
 
 
-def pair_of(device: Device, hookup: Hookup) -> tuple[int, int]:
-    """The two windings a hookup is about, for the answer if it is mended."""
-    found = sorted(device.index(name) for name in _involved(device, hookup))
-    if len(found) >= 2:
-        return found[0], found[1]
-    other = next(k for k in range(len(device.windings)) if k not in found)
-    return tuple(sorted((found[0] if found else 0, other)))  # type: ignore[return-value]
+def _digit(value: Value) -> float:
+    return max(value.step or 0.0, _DIGIT * abs(value.value), 1e-300)

@@ -112,6 +112,7 @@ def draw(kind: str, spare: int, seed: tuple[int, ...]) -> Slipped:
         reads, left = _reads(bench, rng, spare)
         if reads is None:
             continue
+        bench = _without_unseen_loss(bench, reads)
         found = _slip(kind, bench, reads, rng)
         if found is None:
             continue
@@ -237,6 +238,14 @@ def left_over(bench: Bench, reads: list[Read]) -> tuple[int, int]:
     return len(rows) - rank, rank
 
 
+def _without_unseen_loss(bench: Bench, reads: list[Read]) -> Bench:
+    """The same with no shared loss, unless the readings determine all of it."""
+    n = len(bench.windings)
+    if left_over(bench, reads)[1] == n * (n + 1):
+        return bench
+    return replace(bench, resistance=np.diag(np.diag(bench.resistance)))
+
+
 def _reads(bench: Bench, rng: np.random.Generator, spare: int) -> tuple[list[Read] | None, int]:
     """Single windings, then random hookups until all is determined that can be, and as much left over as wanted."""
     pool = _pool(bench)
@@ -357,7 +366,8 @@ def _moved(found: Slipped, bench: Bench, rows: list[int], rng: np.random.Generat
         return None
     row = rows[0]
     after = found.kind.endswith("from then on")
-    if after and (sum(shows[row:]) < 2 or not any(shows[:row])):
+    if after and (sum(shows[row:]) < 2 or sum(shows[:row]) < 2):
+        # One reading that differs from all others is the other kind.
         return None
     for k in range(row, len(found.rows) if after else row + 1):
         found.rows[k] = replace(found.rows[k], inductance=moved)
