@@ -173,11 +173,23 @@ class Bounds:
         Either it is at zero and seen only by its square, or something that bears on it (how a loss splits between
         windings) is open, but limited by physics.
         """
-        if measure.kind != "coupling" or not self._seen(measure.positions[2]):
+        if measure.kind != "coupling" or not self._seen(measure.positions[2]) or not self._open_by_loss(measure):
             return None
         if not self._slopes(measure.positions[2]):
             return self._where_flat(measure)
         return self._from_profile(measure, _OPEN_STEP, None)
+
+    def _open_by_loss(self, measure: Measure) -> bool:
+        """Whether a coupling would be determined if all losses were known (or if it had a slope)."""
+        u, free = self.problem.unknowns, self.free
+        among = free.free < u.entries * u.groups
+        _, s, vt = np.linalg.svd(free.jacobian[:, among], full_matrices=False)
+        kept = vt[s > max(1 / OPEN_ABOVE, 1e-11 * float(s.max(initial=0.0)))]
+        gradient = (measure.gradient(free.theta) * u.scale)[free.free][among]
+        if not self._slopes(measure.positions[2]):
+            gradient = np.where(free.free[among] == measure.positions[2], 0.0, gradient)
+        left = gradient - kept.T @ (kept @ gradient)
+        return float(np.linalg.norm(left)) < 1e-6 * max(float(np.linalg.norm(gradient)), 1e-300)
 
     def _seen(self, position: int) -> bool:
         """Whether an unknown bears on the data away from where its slope may vanish."""

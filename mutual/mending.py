@@ -39,6 +39,7 @@ _TIGHT, _LOOSER = 0.97, 0.7
 # With more pairs of open sign only one is turned round at a time.
 _OPEN_SIGNS = 3
 _MOST_TURNED = 15
+_COUPLINGS = (-0.9, -0.6, -0.3, -0.1, 0.1, 0.3, 0.6, 0.9)
 _NEAR = 6.0
 _LEEWAY = 0.003
 _TRUSTED, _RARE = 1.5, 2.0
@@ -84,6 +85,7 @@ class Mending:
         self.choice = joint.choices[0]
         self.raw = joint.main.unknowns
         self.held = self.raw.fixed
+        self.unread = np.flatnonzero(self.raw.squared)
         self.unknowns = _plain(self.raw, _plain_scale(self.raw))
         # Fits start from the contradicting one, and later from any that was found good.
         self.theta = self.contradicting = _from_squares(self.raw, joint.main.main.best.theta)
@@ -125,7 +127,7 @@ class Mending:
         except RefusedInput:
             return None
         unknowns, starts = self._starts(evidence)
-        usual = UsualLosses(unknowns, self.held, np.flatnonzero(self.raw.squared))
+        usual = UsualLosses(unknowns, self.held, self.unread)
         problem = Problem(Body([evidence, usual]), unknowns, self.held)
         first = self.theta if start is None else start
         best = self._at(problem, first)
@@ -140,7 +142,10 @@ class Mending:
             other = self._at(problem, theta)
             best = other if other.fit.chi_square < best.fit.chi_square else best
             if best.good:
-                break
+                return best
+        if anew and starts:
+            other = self._at(problem, _one_by_one(problem, starts[0]))
+            best = other if other.fit.chi_square < best.fit.chi_square else best
         return best
 
     def _with_losses(self, unknowns: Unknowns, theta: Real) -> Iterator[Real]:
@@ -148,12 +153,11 @@ class Mending:
 
         Losses that show only in closed loops, by squares and differences, leave several minima.
         """
-        unread = np.flatnonzero(self.raw.squared)
-        if not unread.size:
+        if not self.unread.size:
             return
-        for larger in (None, *unread):
+        for larger in (None, *self.unread):
             out = theta.copy()
-            out[unread] = _SMALL_LOSS * unknowns.scale[unread]
+            out[self.unread] = _SMALL_LOSS * unknowns.scale[self.unread]
             if larger is not None:
                 out[larger] = _LARGE_LOSS * unknowns.scale[larger]
             yield out
@@ -168,7 +172,8 @@ class Mending:
             for i, j in combinations(range(unknowns.windings), 2):
                 if moved.winding is None or moved.winding in (i, j):
                     held[unknowns.inductance(group + groups, i, j)] = False
-        usual = UsualLosses(unknowns, held, np.flatnonzero(spread_out(plain, self.raw.squared, False)))
+        unread = np.flatnonzero(spread_out(plain, self.raw.squared, False))
+        usual = UsualLosses(unknowns, held, unread)
         problem = Problem(Body([evidence, usual]), unknowns, held)
         end = descend(problem, spread_out(plain, base.fit.theta, 0.0), _STEPS)
         half = groups * plain.entries
@@ -176,7 +181,7 @@ class Mending:
         rest = _turned_up(self.raw.squared[half:], end.theta[2 * half :])
         if not all(Region(plain).contains(np.concatenate([x, rest])) for x in (before, after)):
             return None
-        return _judged(problem, end.theta)
+        return _judged(problem, end.theta, unread)
 
     def near(self, base: Mended, position: int, alternatives: Sequence[Alternative]) -> list[tuple[Alternative, bool]]:
         """Those under which a row would have shown about what was read, by a fit without it.
@@ -218,15 +223,15 @@ class Mending:
         turned = _turned_up(self.raw.squared, end.theta)
         if turned is not end.theta:
             end = descend(problem, turned, _STEPS)
-        mended = _judged(problem, end.theta)
+        mended = _judged(problem, end.theta, self.unread)
         region = Region(problem.unknowns)
         # Physics only makes a fit worse.
         if not mended.good or region.contains(end.theta):
             return mended
-        return _judged(problem, fit(problem, end.theta, region, steps=_STEPS).theta)
+        return _judged(problem, fit(problem, end.theta, region, steps=_STEPS).theta, self.unread)
 
 
-def _judged(problem: Problem, theta: Real) -> Mended:
+def _judged(problem: Problem, theta: Real, loose: NDArray[np.int64]) -> Mended:
     from scipy.special import chdtrc
 
     found = fit(problem, theta, steps=0)
@@ -235,8 +240,11 @@ def _judged(problem: Problem, theta: Real) -> Mended:
     # What the usual losses determine is no freedom of the readings.
     freedom = data - float(np.sum(found.u[:data] ** 2))
     p = float(chdtrc(freedom, misfit)) if freedom > 0.5 else float(misfit < 4)
+    # Losses that show by their squares alone are no measure of what an explanation leaves free.
+    told = ~np.isin(found.free, loose)
+    freed = np.linalg.svd(found.jacobian[:, told], compute_uv=False)
     cost = found.chi_square + 2 * float(np.sum(np.log(np.diag(found.whitener))))
-    cost += len(found.residual) * float(np.log(2 * np.pi)) + float(np.sum(np.log1p(found.s**2)))
+    cost += len(found.residual) * float(np.log(2 * np.pi)) + float(np.sum(np.log1p(freed**2)))
     return Mended(problem, found, freedom, p, cost)
 
 
@@ -273,6 +281,23 @@ def _made_passive(u: Unknowns, theta: Real) -> Iterator[Real]:
                     out = theta.copy()
                     out[raised] *= (tight / _LOOSER) ** 2
                     yield out
+
+
+def _one_by_one(problem: Problem, start: Real) -> Real:
+    """A start in which every coupling, one after another and twice over, was put where chi-square is least."""
+    u, theta = problem.unknowns, start.copy()
+    least = chi_square(problem, theta)
+    for _ in range(2):
+        for i, j in combinations(range(u.windings), 2):
+            for group in range(u.groups):
+                own, other, m = (u.inductance(group, *ij) for ij in ((i, i), (j, j), (i, j)))
+                for kappa in _COUPLINGS:
+                    tried = theta.copy()
+                    tried[m] = kappa * np.sqrt(abs(theta[own] * theta[other]))
+                    found = chi_square(problem, tried)
+                    if found < least:
+                        theta, least = tried, found
+    return theta
 
 
 def _turned_round(u: Unknowns, theta: Real) -> Iterator[Real]:

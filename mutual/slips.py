@@ -142,13 +142,11 @@ class _Search:
                 assert alternative.moved is not None
                 merit = self.linear.moved(self.joint, alternative.moved.rows, winding)
                 found.append((merit, position, winding, alternative))
-        base = None
         for merit, _, _, alternative in sorted(found, key=lambda f: f[:3])[:_MOVES_TRIED]:
-            if merit > _WORTH_A_FIT * self.linear.total:
+            if merit > _WORTH_A_FIT * self.linear.total or alternative.moved is None:
                 break
-            base = base or self.mending.solve(self.items, anew=False)
-            assert base is not None
-            mended = self.mending.with_moved(alternative.moved, base) if alternative.moved else None
+            base = self.mending.solve(self.mending.changed(alternative))
+            mended = None if base is None else self.mending.with_moved(alternative.moved, base)
             if mended is not None and mended.good:
                 yield Candidate(alternative, mended)
 

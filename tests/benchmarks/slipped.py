@@ -392,13 +392,12 @@ def _record(bench: Bench, reads: list[Read], rng: np.random.Generator) -> Record
 
     common = complex(error("gain_common"), error("phase_common"))
     floor = complex(error("floor_ohm"), omega * error("floor_H"))
-    each: dict[Any, complex] = {}
+    each: dict[Hookup, complex] = {}
     rows = []
     for number, read in enumerate(reads, 1):
-        key = (read.was, None if read.inductance is None else id(read.inductance))
-        if key not in each:
-            each[key] = complex(error("gain_each"), error("phase_each"))
-        z = bench.impedance(read.was, read.inductance) * (1 + common + each[key]) + floor
+        if read.was not in each:
+            each[read.was] = complex(error("gain_each"), error("phase_each"))
+        z = bench.impedance(read.was, read.inductance) * (1 + common + each[read.was]) + floor
         part = abs(z) ** 2
         shown = {
             "inductance": part / (omega * z.imag) if read.parallel else z.imag / omega,
