@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+import functools
 import os
 import signal
 import subprocess
@@ -103,7 +104,10 @@ def test_an_output_that_takes_only_ascii_gets_ascii(folder):
 
 def start(folder, *words):
     pipe = subprocess.PIPE
-    return subprocess.Popen([*PROGRAM, *words], cwd=folder, env=ENVIRONMENT, stdout=pipe, stderr=pipe, text=True)
+    # A test run that a shell put into the background ignores interrupts, and so would what it starts.
+    heed = functools.partial(signal.signal, signal.SIGINT, signal.SIG_DFL)
+    options = {"stdout": pipe, "stderr": pipe, "text": True, "preexec_fn": heed}
+    return subprocess.Popen([*PROGRAM, *words], cwd=folder, env=ENVIRONMENT, **options)
 
 
 def test_a_reader_that_goes_away_is_no_fault(folder):
@@ -138,8 +142,11 @@ def test_an_interrupt_ends_without_a_traceback(folder):
     os.mkfifo(folder / "pipe")
     with start(folder, "estimate", "pipe") as running:
         descriptor = writing_end(folder / "pipe", running)
-        running.send_signal(signal.SIGINT)
-        assert running.wait(60) == 130
+        try:
+            running.send_signal(signal.SIGINT)
+            assert running.wait(60) == 130
+        finally:
+            running.kill()
         assert running.stderr.read() == "mutual: stopped\n"
     os.close(descriptor)
 
