@@ -19,8 +19,9 @@ Real = NDArray[np.float64]
 
 _LEAST_DAMPING = 1 / OPEN_ABOVE**2
 _MOST_DAMPING = 1e12
-# A gain in chi-square below this, or below that part of it, is the end.
-_GAIN, _GAIN_PART = 1e-4, 1e-3
+# A gain in chi-square below this, or below that part of it, is the end; the larger part holds far from any agreement.
+_GAIN, _GAIN_PART, _HOPELESS_PART = 1e-4, 1e-3, 0.04
+_HOPELESS = 30.0
 # No step leads to couplings beyond this, where no device is; a little room for errors of tight pairs.
 _TIGHTEST = 1.05
 
@@ -40,7 +41,7 @@ def chi_square(problem: Problem, theta: Real) -> float:
     return float(white @ white)
 
 
-def descend(problem: Problem, start: Real, steps: int) -> Descent:
+def descend(problem: Problem, start: Real, steps: int, patient: bool = False) -> Descent:
     """Go to the minimum of chi-square below a vector of unknowns, or as far as `steps` lead.
 
     Parameters
@@ -49,6 +50,8 @@ def descend(problem: Problem, start: Real, steps: int) -> Descent:
     start : (P,) float
     steps : int
         Most predictions made.
+    patient : bool
+        Whether to go on where gains are small although chi-square is still large.
     """
     free = np.flatnonzero(~problem.held)
     scale = problem.unknowns.scale[free]
@@ -57,6 +60,7 @@ def descend(problem: Problem, start: Real, steps: int) -> Descent:
     prediction = problem.body.predict(problem.unknowns, theta)
     whitener = problem.body.whitener(prediction)
     residual = _white(problem, whitener, prediction)
+    hopeless = np.inf if patient else _HOPELESS * len(residual)
     while steps > 0:
         slope = prediction.jacobian[:, free] * scale
         jacobian = solve_triangular(whitener, slope, lower=True, check_finite=False)
@@ -71,7 +75,7 @@ def descend(problem: Problem, start: Real, steps: int) -> Descent:
                 continue
             step = cho_solve(factor, gradient)
             expected = float(step @ (2 * gradient - normal @ step))
-            if expected < max(_GAIN, _GAIN_PART**2 * before):
+            if expected < _least_gain(before, hopeless):
                 return Descent(theta, before)
             tried = theta.copy()
             tried[free] += step * scale
@@ -89,9 +93,14 @@ def descend(problem: Problem, start: Real, steps: int) -> Descent:
         whitener = problem.body.whitener(prediction)
         residual = _white(problem, whitener, prediction)
         after = float(residual @ residual)
-        if abs(before - after) < max(_GAIN, _GAIN_PART * after):
+        if abs(before - after) < _least_gain(after, hopeless):
             return Descent(theta, after)
     return Descent(theta, float(residual @ residual))
+
+
+def _least_gain(chi_square: float, hopeless: float) -> float:
+    """A gain in chi-square that is worth a further step."""
+    return max(_GAIN, (_HOPELESS_PART if chi_square > hopeless else _GAIN_PART) * chi_square)
 
 
 def _white(problem: Problem, whitener: Real, prediction: Prediction) -> Real:

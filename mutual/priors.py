@@ -15,13 +15,13 @@ Real = NDArray[np.float64]
 
 # Standard deviation of Rm/sqrt(R1 R2): physics allows -1 to 1, and small values are usual.
 _SHARED = 0.5
-# That of R/(omega L) of a winding whose loss nobody read: an inductance alone is read of windings that have some Q.
-_OWN = 0.3
+# That of R/(omega L): inductances alone are read of windings that have some Q, resistances of poorer ones too.
+_UNREAD, _READ = 0.3, 2.0
 _LEAST = 1e-3
 
 
 class UsualLosses:
-    """Mutual resistances are about nil, give or take half of sqrt(R1 R2), and resistances not read are small.
+    """Mutual resistances are about nil, give or take half of sqrt(R1 R2), and resistances no larger than omega L.
 
     Where the readings determine them, that does not matter; where they do not, it keeps a fit among devices that
     there are.
@@ -37,16 +37,21 @@ class UsualLosses:
     """
 
     def __init__(self, unknowns: Unknowns, held: NDArray[np.bool_], unread: NDArray[np.int64]) -> None:
-        self._unread = unread
-        self._entries = [
+        states = [f for f, omega in enumerate(unknowns.omegas) if omega > 0]
+        own = [(f, i) for f in states for i in range(unknowns.windings)]
+        self._own = np.array([unknowns.resistance(f, i, i) for f, i in own], dtype=np.int64)
+        reactance = [unknowns.omegas[f] * unknowns.scale[unknowns.inductance(0, i, i)] for f, i in own]
+        self._reactance: Real = np.array(reactance, dtype=float)
+        self._shared = [
             tuple(unknowns.resistance(f, *ij) for ij in ((i, i), (j, j), (i, j)))
             for f in range(len(unknowns.omegas))
             for i, j in combinations(range(unknowns.windings), 2)
             if not held[unknowns.resistance(f, i, j)]
         ]
-        count = len(unread) + len(self._entries)
+        count = len(own) + len(self._shared)
+        widths = np.where(np.isin(self._own, unread), _UNREAD, _READ)
         self.values: Real = np.zeros(count)
-        self.noise: Real = np.repeat([_OWN, _SHARED], [len(unread), len(self._entries)])
+        self.noise: Real = np.concatenate([widths, np.full(len(self._shared), _SHARED)])
         self.freedom: Real = np.full(count, np.inf)
         self.rounding: Real = np.zeros(count)
         self.sources: Sequence[Source] = ()
@@ -55,11 +60,10 @@ class UsualLosses:
         self.closed = False
 
     def predict(self, unknowns: Unknowns, theta: Real) -> Prediction:
-        """Losses by their natural sizes, shared ones by sqrt(R1 R2); that is not to pull at R1 and R2 themselves."""
+        """R/(omega L), and Rm/sqrt(R1 R2), which is not to pull at R1 and R2 themselves."""
         jacobian = np.zeros((len(self.values), unknowns.size))
-        first = len(self._unread)
-        jacobian[np.arange(first), self._unread] = 1 / unknowns.scale[self._unread]
-        for k, (own, other, m) in enumerate(self._entries, first):
+        jacobian[np.arange(len(self._own)), self._own] = 1 / self._reactance
+        for k, (own, other, m) in enumerate(self._shared, len(self._own)):
             one, two = (max(abs(float(theta[p])), _LEAST * float(unknowns.scale[p])) for p in (own, other))
             jacobian[k, m] = 1 / np.sqrt(one * two)
         values = jacobian @ theta

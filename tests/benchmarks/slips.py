@@ -14,6 +14,7 @@ cannot show, are counted apart.
 from __future__ import annotations
 
 import argparse
+import itertools
 import re
 import sys
 import time
@@ -30,8 +31,10 @@ from slipped import KINDS, Slipped, draw
 from mutual.collect import collect
 from mutual.device import Hookup
 from mutual.joint import explain
+from mutual.mended import IMPROBABLE
 from mutual.methods.alternatives import Alternative
-from mutual.slips import IMPROBABLE, Candidate, candidates
+from mutual.search import Candidate
+from mutual.slips import candidates
 
 ASKED_LISTED, ASKED_FIRST, ASKED_MEDIAN = 0.95, 0.90, 3
 WORDS = {
@@ -62,9 +65,7 @@ class Tally:
 
     def first(self, least: int = 3) -> float:
         """Fraction first or alone, ties with the same circuit counted."""
-        chosen = [
-            r == 1 or t for r, t, s in zip(self.ranks, self.tied, self.spare, strict=True) if s >= least
-        ]
+        chosen = [r == 1 or t for r, t, s in zip(self.ranks, self.tied, self.spare, strict=True) if s >= least]
         return sum(chosen) / max(len(chosen), 1)
 
     def share(self, flags: list[bool], least: int = 3) -> float:
@@ -88,9 +89,9 @@ class Tally:
 def run(kind: str, count: int, seed: int, show: bool = False, only: Sequence[int] = ()) -> Tally:
     """Draw sets until `count` of them contradict themselves, or those of given numbers."""
     tally = Tally()
-    numbers = iter(only or range(10**9))
-    while len(tally.ranks) < (len(only) or count):
-        number = next(numbers)
+    for number in only or itertools.count():
+        if len(tally.ranks) == count:
+            break
         slipped = draw(kind, 1 + number % 3, (seed, KINDS.index(kind), number))
         start = time.process_time()
         collected = collect([slipped.recording])
@@ -176,7 +177,7 @@ def table(count: int, seed: int, show: str | None = None, only: Sequence[int] = 
         print(
             f"{kind:<30} {len(t.ranks):5d} {t.hidden:6d} {t.listed():7.1%} {t.listed(1, 1):5.0%} {t.listed(2, 2):5.0%} "
             f"{t.listed(3):5.0%} {t.median:7.0f} {t.first():11.1%} {t.share(t.tied):13.1%} {t.share(t.open):11.1%} "
-            f"{t.slower:10.1f}",
+            f"{sum(s[1] for s in t.seconds) / len(t.seconds):6.2f} {max(s[1] for s in t.seconds):6.2f} {t.slower:6.1f}",
             flush=True,
         )
         yield kind, t

@@ -1,0 +1,157 @@
+"""The search for slips: which rows, which changes of them, and the fits that decide."""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Sequence
+from dataclasses import dataclass
+from itertools import combinations
+
+import numpy as np
+
+from mutual.collect import Collected
+from mutual.joint import Joint
+from mutual.leverage import Leverage
+from mutual.mended import IMPROBABLE, Mended
+from mutual.mending import Mending
+from mutual.methods.alternatives import Alternative, Slips
+from mutual.methods.readings import Item
+
+# Rows that are tried, those first without which the rest agrees best.
+_ROWS_TRIED = 30
+# Starts of their own get the likeliest rows, at first and where nothing was found; others start from what was found.
+_ROWS_ANEW = 5
+_PAIRS_TRIED = 6
+# A change that by the linear model leaves more than this of chi-square is not fitted.
+_WORTH_A_FIT = 0.3
+_PROMISING = 0.01
+# Once something was found, rows are left alone without which, by the linear model, this much of chi-square stays.
+_NO_GAIN = 0.9
+_MOVES_TRIED = 8
+
+
+@dataclass(frozen=True)
+class Candidate:
+    """A slip that would explain the readings.
+
+    Attributes
+    ----------
+    alternative : Alternative
+    mended : Mended
+        The fit if it is mended.
+    """
+
+    alternative: Alternative
+    mended: Mended
+
+    @property
+    def score(self) -> float:
+        """-2 ln of its probability, but for a constant."""
+        return self.mended.cost + self.alternative.rarity + self.alternative.typed
+
+
+class Search:
+    """All slips of one set of readings.
+
+    Parameters
+    ----------
+    collected : Collected
+    joint : Joint
+        The fit that contradicts itself.
+    """
+
+    def __init__(self, collected: Collected, joint: Joint) -> None:
+        self.joint, self.items = joint, list(collected.items)
+        self.mending = Mending(self.items, joint)
+        self.slips = Slips(joint.device, [item.row for item in self.items], _names(self.items))
+        self.linear = Leverage(joint, [len(item.columns()) for item in self.items])
+        self.order = [int(k) for k in np.argsort(self.linear.without)[:_ROWS_TRIED]]
+
+    def candidates(self) -> Iterator[Candidate]:
+        """Slips that mend the readings, in no order."""
+        early = []
+        for place, position in enumerate(self.order):
+            if not self.mending.found:
+                early.append(position)
+            elif self.linear.without[position] > _NO_GAIN * self.linear.total:
+                break
+            yield from self._of_row(position, 2 if place < _ROWS_ANEW else 1)
+        # Rows that were tried before anything good was found start better now; where nothing was, try harder.
+        for place, position in enumerate(early[:-1] if self.mending.found else self.order):
+            harder = 3 if place < _ROWS_ANEW else 2
+            yield from self._of_row(position, 1 if self.mending.found else harder)
+        for alternative in self.slips.everywhere():
+            yield from self._tried(alternative, None, 3 if len(self.items) <= _ROWS_TRIED else 1)
+        yield from self._exchanged()
+        yield from self._moved_from()
+
+    def _of_row(self, position: int, effort: int) -> Iterator[Candidate]:
+        removal = self.slips.unknown(position)
+        items = self.mending.changed(removal)
+        if not items:
+            return
+        bases = self.mending.bases(items, effort)
+        if bases[0].p_value < IMPROBABLE / 10 and not (effort > 1 and self._promising(bases[0])):
+            return
+        best: dict[str, Candidate] = {}
+        for base in bases:
+            for alternative, worth in self.mending.near(base, position, list(self.slips.of_row(position))):
+                for found in self._tried(alternative, base, worth):
+                    old = best.get(alternative.text)
+                    if old is None or found.score < old.score:
+                        best[alternative.text] = found
+        yield from best.values()
+        for alternative in self.slips.twice(position):
+            yield from self._tried(alternative, bases[0], 1)
+        moved = self.slips.moved_at(position)
+        mended = self.mending.with_moved(moved.moved, bases[0]) if moved.moved else None
+        if mended is not None and mended.good:
+            yield Candidate(moved, mended)
+        if bases[0].good:
+            yield Candidate(removal, bases[0])
+
+    def _promising(self, base: Mended) -> bool:
+        """Whether a fit without a row, though not good, is so much better that it may only have stopped too early."""
+        return base.freedom < 1 or base.fit.chi_square < _PROMISING * self.joint.main.chi_square
+
+    def _tried(self, alternative: Alternative, start: Mended | None, effort: int) -> Iterator[Candidate]:
+        theta = None if start is None else start.fit.theta
+        mended = self.mending.solve(self.mending.changed(alternative), theta, effort)
+        if mended is not None and mended.good:
+            yield Candidate(alternative, mended)
+
+    def _exchanged(self) -> Iterator[Candidate]:
+        values = [self.mending.evidence([item]).values for item in self.items]
+        found = []
+        for first, second in combinations(sorted(self.order), 2):
+            alternative = self.slips.exchanged(first, second)
+            if alternative is not None:
+                merit = self.linear.exchanged(values, first, second)
+                if merit < _WORTH_A_FIT * self.linear.total:
+                    found.append((merit, first, second, alternative))
+        for _, _, _, alternative in sorted(found, key=lambda f: f[:3])[:_PAIRS_TRIED]:
+            yield from self._tried(alternative, None, 1 if self.mending.found else 2)
+
+    def _moved_from(self) -> Iterator[Candidate]:
+        found = []
+        count = len(self.joint.device.windings)
+        # Of two windings it does not matter which one moved.
+        for winding in range(count if count > 2 else 1):
+            shows, merits = self.linear.shows(self.joint, winding), self.linear.moves(self.joint, winding)
+            rows = [k for k, shown in enumerate(shows) if shown]
+            # With one row before or after it is the same as at one reading.
+            for position in rows[2:-1]:
+                alternative = self.slips.moved_from(position, winding, shows)
+                found.append((merits[position], position, winding, alternative))
+        for merit, _, _, alternative in sorted(found, key=lambda f: f[:3])[:_MOVES_TRIED]:
+            if merit > _WORTH_A_FIT * self.linear.total or alternative.moved is None:
+                break
+            base = self.mending.solve(self.mending.changed(alternative), None, 2)
+            mended = None if base is None else self.mending.with_moved(alternative.moved, base)
+            if mended is not None and mended.good:
+                yield Candidate(alternative, mended)
+
+
+def _names(items: Sequence[Item]) -> list[str]:
+    """How texts name rows: with the file only where there are several."""
+    files = {item.where.rpartition(" row ")[0] for item in items}
+    return [f"row {item.row.number}" if len(files) == 1 else item.where for item in items]
