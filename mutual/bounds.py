@@ -82,7 +82,7 @@ class Bounds:
         parts = self.posterior.contributions(gradient)
         standard = float(np.sqrt(parts.variance))
         plain = measure.kind == "entry" and self.problem.body.linear
-        if not plain and self.posterior.feigned(measure.value, standard):
+        if not plain and self.posterior.feigned(measure.size, standard):
             return None
         if self._by_square(measure, standard) or not self._straight(measure, gradient, standard):
             return self._from_profile(measure, standard, parts)

@@ -32,6 +32,10 @@ _STEPS = 60
 # A step counts as none when it moves no unknown by this part of its natural size, or the fit by this part of a sigma.
 _CONVERGED = 1e-11
 _STILL = 1e-7
+# Damping of steps that went too far, in units of the least information that counts.
+_LEAST_DAMPING, _MOST_DAMPING = 1 / OPEN_ABOVE**2, 1e12
+# Tries for each step; a gain in chi-square that is none where a quantity is pinned.
+_TRIES, _EASE = 3, 1e-4
 
 
 @dataclass(frozen=True)
@@ -129,20 +133,29 @@ def fit(
     theta = start.copy()
     free = np.flatnonzero(~problem.held)
     cuts = region.cuts() if region is not None else None
-    for _ in range(steps):
-        whitened = _whiten(problem, theta, free)
-        step = _step(problem, theta, whitened, free, cuts, pin)
+    whitened, damping, fresh, idle = _whiten(problem, theta, free), 0.0, True, 0
+    straight = problem.body.linear and pin is None
+    for _ in range(_TRIES * steps if steps else 0):
+        step = _step(problem, theta, whitened, free, cuts, pin, damping)
         largest = float(np.max(np.abs(step), initial=0.0))
-        if cuts is not None and cuts.rows:
-            moved = largest >= _CONVERGED
-            theta = theta.copy()
-            theta[free] += step * problem.unknowns.scale[free]
-        else:
-            theta, moved = _line_search(problem, theta, step, free, whitened, pin)
         still = float(np.linalg.norm(whitened.jacobian @ step)) < _STILL and largest < _STILL
+        out = theta.copy()
+        out[free] += step * problem.unknowns.scale[free]
+        gain = np.inf
+        # A limit just met may cost chi-square; otherwise a step that does is too long.
+        if not (straight or still or (fresh and cuts is not None and cuts.rows)):
+            before = _now(whitened, theta, pin)
+            gain = before - _merit(problem, whitened, out, pin)
+            if gain < -1e-9 * before - 1e-12 and largest >= _CONVERGED and damping < _MOST_DAMPING:
+                damping = max(30 * damping, _LEAST_DAMPING)
+                continue
+        theta, damping = out, damping / 30 if damping > _LEAST_DAMPING else 0.0
         fresh = region.violated(theta, cuts) if region is not None and cuts is not None else False
-        if (largest < _CONVERGED or still or not moved) and not fresh:
+        idle = idle + 1 if pin is not None and gain < _EASE else 0
+        steps -= 1
+        if ((largest < _CONVERGED or still or idle > 1 or steps < 1) and not fresh) or steps < -_TRIES:
             break
+        whitened = _whiten(problem, theta, free)
     return _finish(problem, theta, free)
 
 
@@ -171,7 +184,13 @@ def _determined(jacobian: Real) -> tuple[Real, Real, Real]:
 
 
 def _step(
-    problem: Problem, theta: Real, white: _Whitened, free: NDArray[np.int64], cuts: Cuts | None, pin: Pin | None
+    problem: Problem,
+    theta: Real,
+    white: _Whitened,
+    free: NDArray[np.int64],
+    cuts: Cuts | None,
+    pin: Pin | None,
+    damping: float,
 ) -> Real:
     """Step in natural sizes, within the cuts."""
     scale = problem.unknowns.scale[free]
@@ -179,6 +198,9 @@ def _step(
     if pin is not None:
         jacobian = np.vstack([jacobian, pin.measure.gradient(theta)[free] * scale / pin.width])
         residual = np.append(residual, pin.missing(theta))
+    if damping:
+        jacobian = np.vstack([jacobian, np.sqrt(damping) * np.eye(len(free))])
+        residual = np.append(residual, np.zeros(len(free)))
     u, s, vt = _determined(jacobian)
     step = vt.T @ ((u.T @ residual) / s)
     if cuts is None or not len(cuts.rows):
@@ -186,31 +208,15 @@ def _step(
     return cuts.nearest(step, jacobian, theta / problem.unknowns.scale, free)
 
 
-def _line_search(
-    problem: Problem, theta: Real, step: Real, free: NDArray[np.int64], white: _Whitened, pin: Pin | None
-) -> tuple[Real, bool]:
-    """Halve the step until chi-square, V held, does not grow."""
+def _merit(problem: Problem, white: _Whitened, at: Real, pin: Pin | None) -> float:
+    """Chi-square of unknowns with V as it is, and what a pin misses."""
+    prediction = problem.body.predict(problem.unknowns, at)
+    r = solve_triangular(white.whitener, problem.body.values - prediction.values, lower=True, check_finite=False)
+    return float(r @ r) + (0.0 if pin is None else pin.missing(at) ** 2)
 
-    def merit(at: Real) -> float:
-        prediction = problem.body.predict(problem.unknowns, at)
-        r = solve_triangular(white.whitener, problem.body.values - prediction.values, lower=True, check_finite=False)
-        extra = 0.0 if pin is None else pin.missing(at)
-        return float(r @ r + extra**2)
 
-    if (problem.body.linear and pin is None) or not len(step):
-        out = theta.copy()
-        out[free] += step * problem.unknowns.scale[free]
-        return out, bool(len(step))
-    before = float(white.residual @ white.residual) + (0.0 if pin is None else pin.missing(theta) ** 2)
-    length = 1.0
-    for _ in range(12):
-        out = theta.copy()
-        out[free] += length * step * problem.unknowns.scale[free]
-        after = merit(out)
-        if after <= before * (1 + 1e-9) + 1e-12:
-            return out, length * float(np.max(np.abs(step))) > _CONVERGED
-        length /= 2
-    return theta, False
+def _now(white: _Whitened, theta: Real, pin: Pin | None) -> float:
+    return float(white.residual @ white.residual) + (0.0 if pin is None else pin.missing(theta) ** 2)
 
 
 def linearised(problem: Problem, best: Fit) -> Fit:

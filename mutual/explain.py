@@ -6,38 +6,28 @@ An explanation belongs to one choice of what data sheets leave open; `union` joi
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import dataclass, replace
+from dataclasses import replace
 
 import numpy as np
 from numpy.typing import NDArray
 from scipy.special import chdtrc
 
-from mutual.bounds import Bounds, Interval
+from mutual.bounds import Interval
 from mutual.engine import Fit, Problem, fit, linearised
 from mutual.evidence import Body, Evidence
-from mutual.nuisance import Shared, bounded, open_shared, with_loss
+from mutual.minimum import Minimum
+from mutual.nuisance import Shared, bounded, open_shared, with_sizes
+from mutual.others import other_explanations
 from mutual.physics import Region
 from mutual.quantities import Measure
 from mutual.sharing import Sharing
 from mutual.start import make_start
+from mutual.valleys import anchored, open_losses
 
 Real = NDArray[np.float64]
 
 _AS_GOOD = 1e-6
 _BETTER = 1e-3
-_ALLOWED = 4.0
-# Losses of windings of which none was read, as R/(omega L).
-_LOSSES = (0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0)
-
-
-@dataclass(frozen=True)
-class Setting:
-    """One way of settling what is open: a problem with its fits and bounds."""
-
-    problem: Problem
-    free: Fit
-    best: Fit
-    bounds: Bounds
 
 
 class Explanation:
@@ -73,17 +63,23 @@ class Explanation:
         if hidden:
             self.shared = [bounded(problem, free, where) for where in hidden]
             free, best, problem = self._with_shared(problem, start.thetas)
-        self.main = self._setting(problem, free, best)
-        self._lossy: list[tuple[float, Setting]] | None = None
+        self.main = self._minimum(problem, free, best)
+        found = other_explanations(problem, best, self.region, start.thetas)
+        self.others = [self._minimum(problem, f, f) for f in found]
 
     def _with_shared(self, problem: Problem, thetas: Sequence[Real]) -> tuple[Fit, Fit, Problem]:
         """Hold the open mutual resistances at nil, or where they have to be within their bounds."""
         places = np.array([self.unknowns.resistance(s.state, s.i, s.j) for s in self.shared])
         held = problem.holding(places)
         free, best = self._least(held, thetas)
-        self._sharing = Sharing(problem, tuple(self.shared), self.part, self.coverage)
-        within = fit(problem, best.theta, self._sharing.region(best))
+        sized = with_sizes(problem, best)
+        losses = open_losses(problem, self.shared, best.theta)
+        self._sharing = Sharing(sized, tuple(self.shared), tuple(losses), self.part, self.coverage)
+        region = self._sharing.region(best)
+        within = min((fit(sized, theta, region) for theta in (best.theta, *thetas)), key=lambda f: f.chi_square)
         if within.chi_square < best.chi_square - _BETTER:
+            # The readings cannot do without some shared loss: what leads along its valley is held, not the ohms of it.
+            held = anchored(problem, self.shared, losses, within.theta)
             free, best = self._least(held, [within.theta])
         return free, best, held
 
@@ -113,8 +109,8 @@ class Explanation:
         relative = found.theta[self.unknowns.squared] / self.unknowns.scale[self.unknowns.squared]
         return round(float(np.sum(np.abs(relative))), 6)
 
-    def _setting(self, problem: Problem, free: Fit, best: Fit) -> Setting:
-        return Setting(problem, free, best, Bounds(problem, free, best, self.region, self.coverage))
+    def _minimum(self, problem: Problem, free: Fit, best: Fit) -> Minimum:
+        return Minimum(problem, free, best, self.region, self.coverage, self._least)
 
     @property
     def chi_square(self) -> float:
@@ -137,81 +133,37 @@ class Explanation:
 
     def interval(self, measure: Measure) -> tuple[Interval | None, str]:
         """Bounds of a quantity and which side they bound: "both", "lower" or "upper"."""
-        unread = self._unread()
-        found = self.main.bounds.interval(measure, flat=not unread.size)
-        side = "both"
-        if found is None and unread.size:
-            found, side = self._over_losses(measure, unread)
+        found, side = self._with_others(measure, *self.main.interval(measure))
         if found is None or self._sharing is None:
             return found, side
-        return self.over_shared(measure, found, None)
+        wide, side = self.over_shared(measure, found, None)
+        return (None, "both") if _idle(wide, side, measure) else (wide, side)
 
-    def _unread(self) -> NDArray[np.int64]:
-        """Squared resistances that bear on the data."""
-        u, free = self.unknowns, self.main.free
-        bearing = np.zeros(u.size, dtype=bool)
-        bearing[free.free] = np.linalg.norm(free.jacobian, axis=0) > 1e-9
-        return np.flatnonzero(u.squared & bearing & ~self.main.problem.held)
-
-    def _over_losses(self, measure: Measure, unread: NDArray[np.int64]) -> tuple[Interval | None, str]:
-        """Union over the losses of windings of which none was read, from none upward."""
-        if self._lossy is None:
-            self._lossy = self._losses(unread)
-        lossless = self._lossy[0][1]
-        if lossless.best.chi_square > self.chi_square + _ALLOWED:
-            # Some loss there must be: chi-square says how little and how much.
-            found = self.main.bounds.interval(measure)
-            side = "both"
-            if found is not None and found.at_lower != found.at_upper:
-                side = "lower" if found.at_upper else "upper"
-            return (found if found is None or side == "both" else replace(found, standard=None)), side
-        least = self._lossy[0][1].bounds.interval(measure)
-        if least is None:
-            return None, "both"
-        values = [float(measure.value(setting.best.theta)) for _, setting in self._lossy]
-        if measure.folded:
-            values = [abs(v) for v in values]
-        rise, fall = max(values) - values[0], values[0] - min(values)
-        if max(rise, fall) < 0.02 * (least.upper - least.lower) / 2:
-            return least, "both"
-        floor = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
-        if rise >= fall:
-            found, side, idle = replace(least, upper=measure.limits[1], standard=None), "lower", least.lower <= floor
-        else:
-            found, side, idle = replace(least, lower=floor, standard=None), "upper", least.upper >= measure.limits[1]
-        return (None if idle else found), side
-
-    def _losses(self, unread: NDArray[np.int64]) -> list[tuple[float, Setting]]:
-        """Settings with the unread resistances held: at nothing, then rising while the readings allow it."""
-        lossless = self.main.problem.holding(unread)
-        out: list[tuple[float, Setting]] = []
-        for loss in (0.0, *_LOSSES):
-            theta = self.main.free.theta.copy() if not out else out[-1][1].free.theta.copy()
-            theta[unread] = loss**2 * self.unknowns.scale[unread]
-            starts = [theta]
-            if not out:
-                starts += [self._with(t, theta, unread) for t in self._flipped(theta)]
-            problem = with_loss(self.main.problem, unread, loss) if out else lossless
-            free, best = self._least(problem, starts)
-            if out and best.chi_square > out[0][1].best.chi_square + _ALLOWED:
+    def _with_others(self, measure: Measure, found: Interval | None, side: str) -> tuple[Interval | None, str]:
+        """Bounds that hold what other explanations say as well."""
+        for other in self.others:
+            if found is None:
                 break
-            out.append((loss, self._setting(problem, free, best)))
-        return out
-
-    def _with(self, theta: Real, values: Real, positions: NDArray[np.int64]) -> Real:
-        out = theta.copy()
-        out[positions] = values[positions]
-        return out
-
-    def _flipped(self, theta: Real) -> list[Real]:
-        """The same unknowns with all couplings at half, as a second start."""
-        u = self.unknowns
-        out = theta.copy()
-        off = np.tile(u.first != u.second, u.groups)
-        out[: len(off)][off] = 0.5 * u.scale[: len(off)][off]
-        return [out]
+            value = float(measure.size(other.best.theta))
+            room = _BETTER * (found.upper - found.lower) if np.isfinite(found.upper - found.lower) else 0.0
+            if found.lower - room <= value <= found.upper + room:
+                continue
+            there, other_side = other.interval(measure)
+            if there is None:
+                return None, "both"
+            lower, upper = min(found.lower, there.lower, value), max(found.upper, there.upper, value)
+            found = replace(found, lower=lower, upper=upper, standard=None)
+            side = side if side == other_side else next(s for s in ("lower", "upper") if s in (side, other_side))
+        return (None, "both") if found is not None and _idle(found, side, measure) else (found, side)
 
     def over_shared(self, measure: Measure, found: Interval, part: float | None) -> tuple[Interval, str]:
         """Widen bounds to what open mutual resistances may do, within their bounds or a part of sqrt(R1 R2)."""
         assert self._sharing is not None
         return self._sharing.widened(self.main.best, self.main.bounds.posterior, measure, found, part)
+
+
+def _idle(found: Interval, side: str, measure: Measure) -> bool:
+    """Whether bounds say no more than physics does."""
+    least = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
+    below, above = found.lower <= least, found.upper >= measure.limits[1]
+    return below and above if side == "both" else below if side == "lower" else above

@@ -132,9 +132,9 @@ class Region:
                     fresh = True
         return fresh
 
-    def contains(self, theta: Real) -> bool:
+    def contains(self, theta: Real, tolerance: float = TOLERANCE * 10) -> bool:
         """Whether a vector of unknowns is physical."""
-        return all(value >= -TOLERANCE * 10 for value, _ in self.directions(theta))
+        return all(value >= -tolerance for value, _ in self.directions(theta))
 
     def inside(self, thetas: Real, skipped: frozenset[int] = frozenset()) -> NDArray[np.bool_]:
         """(N,) which of many vectors (N, P) are physical, some of the limits (numbered as in `directions`) left out."""

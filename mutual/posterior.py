@@ -97,7 +97,8 @@ class Posterior:
             return None
         theta = f.theta.copy()
         theta[f.free] += step * u.scale[f.free]
-        found = find(self.problem, theta)
+        # Where the fit is a device that can be, only another that can be speaks against it.
+        found = find(self.problem, theta, self.region if self.region.contains(f.theta) else None)
         return found.theta if found.chi_square <= f.chi_square + 0.01 else None
 
     def feigned(self, value: Callable[[Real], Real], standard: float) -> bool:

@@ -13,6 +13,7 @@ from mutual.quantities import Measure
 
 Real = NDArray[np.float64]
 _UPRIGHT = 3.0
+_HALVINGS, _NO_NEARER = 20, 0.98
 # A crossing is near enough when the root of the rise is right to this part.
 _CLOSE = 3e-3
 # Width of a pin in steps: the fit may rest a little beside it, and is taken where it rests.
@@ -73,17 +74,19 @@ class Profile:
             target = value + (target - value) * float(np.clip(1.1 * wanted / max(high, 1e-9), 1.5, 4.0))
         else:
             return None
-        for _ in range(30):
+        for _ in range(_HALVINGS):
             # A wall of physics stands upright: there only halving comes near it.
             part = 0.5 if high > _UPRIGHT * wanted else float(np.clip((wanted - low) / (high - low), 0.05, 0.95))
             middle, rise, moved = profile(near + (far - near) * part)
             if abs(rise - wanted) < _CLOSE * wanted:
                 return middle
+            left = abs(far - near)
             if rise > wanted:
                 far, high = middle, rise
             else:
                 near, low, theta = middle, rise, moved
-            if abs(far - near) < _CLOSE * abs(far - value):
+            # A fit that does not come to rest where it is pinned gets no nearer.
+            if abs(far - near) < _CLOSE * abs(far - value) or abs(far - near) > _NO_NEARER * left:
                 return far
         return far
 

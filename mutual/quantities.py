@@ -50,6 +50,10 @@ class Measure:
             return own - m * m / other
         return m / own
 
+    def size(self, theta: Real) -> Real:
+        """What people ask for: the magnitude where that is all they ask for."""
+        return np.abs(self.value(theta)) if self.folded else self.value(theta)
+
     def gradient(self, theta: Real) -> Real:
         """Derivatives (P,) by the unknowns."""
         out = np.zeros(len(theta))

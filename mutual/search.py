@@ -23,10 +23,12 @@ _ROWS_ANEW = 5
 _PAIRS_TRIED = 6
 # A change that by the linear model leaves more than this of chi-square is not fitted.
 _WORTH_A_FIT = 0.3
-_PROMISING = 0.01
+_PROMISING, _HARDLY_PROMISING = 0.01, 0.05
 # Once something was found, rows are left alone without which, by the linear model, this much of chi-square stays.
 _NO_GAIN = 0.9
 _MOVES_TRIED = 8
+# Below this part of chi-square, what the linear model sees of a contradiction is not what it is about.
+_TELLING = 0.5
 
 
 @dataclass(frozen=True)
@@ -64,6 +66,8 @@ class Search:
         self.mending = Mending(self.items, joint)
         self.slips = Slips(joint.device, [item.row for item in self.items], _names(self.items))
         self.linear = Leverage(joint, [len(item.columns()) for item in self.items])
+        # Where physics is what the readings contradict, the linear model without its limits tells nothing.
+        self.telling = self.linear.total > _TELLING * joint.main.chi_square
         self.order = [int(k) for k in np.argsort(self.linear.without)[:_ROWS_TRIED]]
 
     def candidates(self) -> Iterator[Candidate]:
@@ -72,7 +76,7 @@ class Search:
         for place, position in enumerate(self.order):
             if not self.mending.found:
                 early.append(position)
-            elif self.linear.without[position] > _NO_GAIN * self.linear.total:
+            elif self.telling and self.linear.without[position] > _NO_GAIN * self.linear.total:
                 break
             yield from self._of_row(position, 2 if place < _ROWS_ANEW else 1)
         # Rows that were tried before anything good was found start better now; where nothing was, try harder.
@@ -90,7 +94,7 @@ class Search:
         if not items:
             return
         bases = self.mending.bases(items, effort)
-        if bases[0].p_value < IMPROBABLE / 10 and not (effort > 1 and self._promising(bases[0])):
+        if bases[0].p_value < IMPROBABLE / 10 and not self._promising(bases[0], effort):
             return
         best: dict[str, Candidate] = {}
         for base in bases:
@@ -109,9 +113,15 @@ class Search:
         if bases[0].good:
             yield Candidate(removal, bases[0])
 
-    def _promising(self, base: Mended) -> bool:
+    def _promising(self, base: Mended, effort: int) -> bool:
         """Whether a fit without a row, though not good, is so much better that it may only have stopped too early."""
-        return base.freedom < 1 or base.fit.chi_square < _PROMISING * self.joint.main.chi_square
+        if effort < 2:
+            return False
+        part = _PROMISING if effort < 3 else _HARDLY_PROMISING
+        return base.freedom < 1 or base.fit.chi_square < part * self.joint.main.chi_square
+
+    def _worth_a_fit(self, chi_square: float) -> bool:
+        return not self.telling or chi_square < _WORTH_A_FIT * self.linear.total
 
     def _tried(self, alternative: Alternative, start: Mended | None, effort: int) -> Iterator[Candidate]:
         theta = None if start is None else start.fit.theta
@@ -126,7 +136,7 @@ class Search:
             alternative = self.slips.exchanged(first, second)
             if alternative is not None:
                 merit = self.linear.exchanged(values, first, second)
-                if merit < _WORTH_A_FIT * self.linear.total:
+                if self._worth_a_fit(merit):
                     found.append((merit, first, second, alternative))
         for _, _, _, alternative in sorted(found, key=lambda f: f[:3])[:_PAIRS_TRIED]:
             yield from self._tried(alternative, None, 1 if self.mending.found else 2)
@@ -143,7 +153,7 @@ class Search:
                 alternative = self.slips.moved_from(position, winding, shows)
                 found.append((merits[position], position, winding, alternative))
         for merit, _, _, alternative in sorted(found, key=lambda f: f[:3])[:_MOVES_TRIED]:
-            if merit > _WORTH_A_FIT * self.linear.total or alternative.moved is None:
+            if not self._worth_a_fit(merit) or alternative.moved is None:
                 break
             base = self.mending.solve(self.mending.changed(alternative), None, 2)
             mended = None if base is None else self.mending.with_moved(alternative.moved, base)

@@ -2,22 +2,22 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass, replace
+from dataclasses import dataclass, field, replace
 
 import numpy as np
+from scipy.special import ndtri
 
 from mutual.bounds import Interval
 from mutual.engine import Fit, Problem
 from mutual.nuisance import Shared
 from mutual.physics import Region
 from mutual.posterior import Posterior
-from mutual.profile import Profile
 from mutual.quantities import Measure
+from mutual.valleys import Station, Valleys, turning
 
 # Less than this part of a standard uncertainty is not followed.
 _NOTABLE = 0.02
-# Along a valley that the border of physics ends, a profile stops a little short.
-_MARGIN = 1.03
+_CLOSE = 0.02
 
 
 @dataclass(frozen=True)
@@ -29,6 +29,8 @@ class Sharing:
     problem : Problem
         With those resistances free.
     shared : tuple of Shared
+    losses : tuple of (state, winding)
+        Losses that the data leave open with them.
     part : float
         Bound as a fraction of sqrt(R1 R2) where no other is known.
     coverage : float
@@ -36,8 +38,10 @@ class Sharing:
 
     problem: Problem
     shared: tuple[Shared, ...]
+    losses: tuple[tuple[int, int], ...]
     part: float
     coverage: float
+    _known: dict[float | None, list[Station]] = field(default_factory=dict, compare=False)
 
     def region(self, at: Fit, part: float | None = None) -> Region:
         """The physical region with every open mutual resistance below its bound, or below a part of sqrt(R1 R2)."""
@@ -53,31 +57,44 @@ class Sharing:
         self, best: Fit, posterior: Posterior, measure: Measure, found: Interval, part: float | None
     ) -> tuple[Interval, str]:
         """Bounds that enclose what the open resistances may do, and which side they bound."""
-        region = self.region(best, part)
-        standard = found.standard or (found.upper - found.lower) / 4
-        if not self._bears(best, posterior, region, measure, standard):
+        region, scale = self.region(best, part), self.problem.unknowns.scale
+        here = float(np.sqrt(posterior.contributions(measure.gradient(best.theta)).variance))
+        if not self._bears(best, posterior, region, measure, here or (found.upper - found.lower) / 4):
             return found, "both"
-        profile = Profile(self.problem, best, region, self.coverage)
-        least = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
-        ends = []
-        for step, limit in ((-standard, least), (standard, measure.limits[1])):
-            end = profile.crossing(measure, found.value, step, limit)
-            ends.append(None if end is None else found.value + _MARGIN * (end - found.value))
-        lower, upper = ends
-        wide = replace(
-            found,
-            lower=least if lower is None else max(min(found.lower, lower), least),
-            upper=measure.limits[1] if upper is None else min(max(found.upper, upper), measure.limits[1]),
-        )
-        if (lower is None) == (upper is None):
-            return wide, "both"
-        return replace(wide, standard=None), "lower" if upper is None else "upper"
+        least, most = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0], measure.limits[1]
+        low, high = found.lower, found.upper
+        stations = self._stations(best, region, part)
+        values = turning(stations, np.array([float(measure.size(s.fit.theta)) for s in stations]))[0]
+        for station, value in zip(stations, values.tolist(), strict=True):
+            left = np.sqrt(max(1 - (station.rise / self._wanted) ** 2, 0.0))
+            wide = left * station.standard(measure, scale) / here if here > 0 else left
+            low = min(low, value - wide * (found.value - found.lower))
+            high = max(high, value + wide * (found.upper - found.value))
+        # What comes that close to a limit of physics is limited by nothing else.
+        at_least = low <= least + _CLOSE * (found.value - low)
+        at_most = high >= most - _CLOSE * (high - found.value)
+        wide_open = replace(found, lower=least if at_least else low, upper=most if at_most else high)
+        if at_least == at_most:
+            return wide_open, "both"
+        return replace(wide_open, standard=None), "lower" if at_most else "upper"
+
+    @property
+    def _wanted(self) -> float:
+        return float(ndtri((1 + self.coverage) / 2))
+
+    def _stations(self, best: Fit, region: Region, part: float | None) -> list[Station]:
+        if part not in self._known:
+            valleys = Valleys(self.problem, self.shared, self.losses, best, region, self._wanted)
+            self._known[part] = valleys.stations()
+        return self._known[part]
 
     def _bears(self, best: Fit, posterior: Posterior, region: Region, measure: Measure, standard: float) -> bool:
         """Whether an open mutual resistance at its bound would move a quantity notably."""
         u = self.problem.unknowns
         weight = (measure.gradient(best.theta)[best.free] * u.scale[best.free]) @ posterior.gain
         for f, i, j, part in region.shared:
+            if u.resistance(f, i, j) in best.free:
+                return True
             r1, r2 = (abs(float(best.theta[u.resistance(f, k, k)])) for k in (i, j))
             column = best.prediction.jacobian[:, u.resistance(f, i, j)] * part * np.sqrt(r1 * r2)
             if abs(float(weight @ column)) > _NOTABLE * standard:

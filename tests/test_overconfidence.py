@@ -169,21 +169,24 @@ def from_one_side(pair: Pair, part: float, as_quality: bool = False) -> Estimate
 def test_shared_loss_at_its_default(as_quality: bool) -> None:
     """k 0.12, both windings of Q 30, at most a tenth of sqrt(R1 R2) shared: 0.1200 to 0.1205 remains."""
     pair = pair_of(0.12, 30, 30)
-    assert one_side(pair, 0.1) == pytest.approx((0.1200, 0.1205), abs=5e-5)
+    least, most = one_side(pair, 0.1)
+    assert (least, most) == pytest.approx((0.1200, 0.1205), abs=5e-5)
     found = from_one_side(pair, 0.1, as_quality)
     k = known(found.pairs[0].coupling)
-    assert (k.lower, k.upper) == pytest.approx((0.1200, 0.1205), abs=6e-5)
+    # Beyond the curve lies the noise of both readings, 0.14 nH of k^2 L1, and that of both resistances.
+    u = 0.1414e-9 / (2 * 0.12 * pair.l1)
+    assert least - 3 * u < k.lower < least - u and most + u < k.upper < most + 4 * u
     assert k.value == pytest.approx(0.12, abs=1e-5)
     assert "losses shared" in codes(found, "note")
     assert known(formula(found, "two shorted, impedances").coupling).value == pytest.approx(0.12, abs=1e-9)
 
 
-@pytest.mark.parametrize("q", [30.0])
+@pytest.mark.parametrize("q", [10.0, 30.0, 100.0])
 def test_shared_loss_without_a_bound(q: float) -> None:
-    """With shared_loss = 1, open and short from one side leave k = 0.12 anywhere up to 1, at Q 30."""
+    """With shared_loss = 1, open and short from one side leave k = 0.12 anywhere up to 1, whatever the Q."""
     pair = pair_of(0.12, q, q)
     least, most = one_side(pair, 1.0)
-    assert least == pytest.approx(0.12, abs=1e-4) and most > 0.999
+    assert least == pytest.approx(0.12, abs=5e-4) and most > 0.999
     k = known(from_one_side(pair, 1.0).pairs[0].coupling)
     assert k.lower <= least + 1e-6 and k.upper in (None, 1.0)
     assert k.bound == "lower"
@@ -191,10 +194,10 @@ def test_shared_loss_without_a_bound(q: float) -> None:
 
 @pytest.mark.parametrize(
     ("k", "q", "part", "used"),
-    [(0.02, 30, 0.1, 0), (0.05, 30, 0.1, 0), (0.12, 10, 0.1, 0), (0.12, 30, 0.3, 0),
-     (0.3, 30, 0.1, 0), (0.3, 30, 1, 0), (0.5, 100, 1, 0), (0.9, 10, 0.1, 0), (0.9, 10, 1, 0),
-     (0.3, 30, 0.1, 0.9), (0.9, 10, 0.1, 0.9),
-     (0.02, 30, 0.1, -0.9), (0.12, 30, 0.3, -0.9), (0.3, 30, 1, -0.9), (0.9, 10, 0.1, -0.9)],
+    [(k, q, part, used)
+     for used in (0, 0.9, -0.9, 0.5)
+     for k, q, part in ((0.02, 30, 0.1), (0.05, 30, 0.1), (0.12, 10, 0.1), (0.12, 30, 0.3), (0.12, 30, 0.46),
+                        (0.3, 30, 0.1), (0.3, 30, 1), (0.5, 100, 1), (0.9, 10, 0.1), (0.9, 10, 1))],
 )  # fmt: skip
 def test_shared_loss_is_enclosed(k: float, q: float, part: float, used: float) -> None:
     """Whatever part of the allowed loss is really shared, the bounds hold all k that the readings leave."""
@@ -329,16 +332,7 @@ def label(hookups: tuple[tuple[str, str], ...]) -> str:
     return ", ".join(" tied ".join(part for part in h if part) for h in hookups)
 
 
-# Known limits (see DEVELOPERS.md): these have several exact explanations, of which the program knows one. They are
-# left out here, not passed: True where resistances are read as well.
-NOT_YET = {
-    (False, (SECOND, SECOND_SHORT, PARALLEL)),
-    (True, (SECOND, SECOND_SHORT, PARALLEL)),
-    (False, (FIRST_SHORT, PARALLEL, OTHER_PARALLEL)),
-    (False, (SECOND, SERIES, PARALLEL, OTHER_PARALLEL)),
-    (True, (FIRST, OTHER_PARALLEL)),
-}
-FEW = [(r, s) for r in (False, True) for s in (*SMALL_SETS, *LARGER_SETS) if (r, tuple(s)) not in NOT_YET]
+FEW = [(r, s) for r in (False, True) for s in (*SMALL_SETS, *LARGER_SETS)]
 
 
 @pytest.mark.parametrize(

@@ -1,0 +1,139 @@
+"""One minimum of chi-square with its bounds, over the losses of windings of which no resistance was read."""
+
+from __future__ import annotations
+
+from collections.abc import Callable, Sequence
+from dataclasses import replace
+
+import numpy as np
+from numpy.typing import NDArray
+
+from mutual.bounds import Bounds, Interval
+from mutual.engine import Fit, Problem
+from mutual.nuisance import with_loss
+from mutual.physics import Region
+from mutual.quantities import Measure
+
+Real = NDArray[np.float64]
+Ints = NDArray[np.int64]
+Least = Callable[[Problem, Sequence[Real]], tuple[Fit, Fit]]
+
+_ALLOWED = 4.0
+# Losses of windings of which none was read, as R/(omega L).
+_LOSSES = (0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0)
+# A change below this part of a half width is none.
+_NOTABLE = 0.02
+
+
+class Minimum:
+    """One minimum: a problem with its fits and bounds.
+
+    Parameters
+    ----------
+    problem : Problem
+    free, best : Fit
+        Anywhere, and within the physical region.
+    region : Region
+    coverage : float
+    least : callable
+        (problem, starts) -> (free, best), lowest of the fits from several starts.
+    """
+
+    def __init__(self, problem: Problem, free: Fit, best: Fit, region: Region, coverage: float, least: Least) -> None:
+        self.problem, self.free, self.best = problem, free, best
+        self.bounds = Bounds(problem, free, best, region, coverage)
+        self._region, self._coverage, self._least = region, coverage, least
+        self._lossy: list[Minimum] | None = None
+
+    def interval(self, measure: Measure) -> tuple[Interval | None, str]:
+        """Bounds of a quantity and which side they bound: "both", "lower" or "upper"."""
+        unread = self._unread()
+        found = self.bounds.interval(measure, flat=not unread.size)
+        if found is not None or not unread.size:
+            return found, "both"
+        return self._over_losses(measure, unread)
+
+    def _unread(self) -> Ints:
+        """Squared resistances that bear on the data."""
+        u, free = self.problem.unknowns, self.free
+        bearing = np.zeros(u.size, dtype=bool)
+        bearing[free.free] = np.linalg.norm(free.jacobian, axis=0) > 1e-9
+        return np.flatnonzero(u.squared & bearing & ~self.problem.held)
+
+    def _over_losses(self, measure: Measure, unread: Ints) -> tuple[Interval | None, str]:
+        """Union over the losses of windings of which none was read, from none upward."""
+        if self._lossy is None:
+            self._lossy = self._losses(unread)
+        lossless = self._lossy[0]
+        if lossless.best.chi_square > self.best.chi_square + _ALLOWED:
+            # Some loss there must be: chi-square says how little and how much.
+            found = self.bounds.interval(measure)
+            side = "both"
+            if found is not None and found.at_lower != found.at_upper:
+                side = "lower" if found.at_upper else "upper"
+            return (found if found is None or side == "both" else replace(found, standard=None)), side
+        least = lossless.bounds.interval(measure)
+        if least is None:
+            return None, "both"
+        values = np.array([float(measure.size(m.best.theta)) for m in self._lossy])
+        rise, fall = float(values.max() - values[0]), float(values[0] - values.min())
+        notable = _NOTABLE * (least.upper - least.lower) / 2
+        if max(rise, fall) < notable:
+            return least, "both"
+        floor = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
+        if rise >= fall:
+            lower = self._farther(measure, values, least.lower, -1.0) if fall > notable else least.lower
+            found, side, idle = replace(least, lower=lower, upper=measure.limits[1], standard=None), "lower", lower
+            return (None if idle <= floor else found), side
+        upper = self._farther(measure, values, least.upper, 1.0) if rise > notable else least.upper
+        found, side, idle = replace(least, lower=floor, upper=upper, standard=None), "upper", upper
+        return (None if idle >= measure.limits[1] else found), side
+
+    def _farther(self, measure: Measure, values: Real, end: float, sign: float) -> float:
+        """An end of the bounds, moved out to that of the losses which carry a quantity farthest that way."""
+        assert self._lossy is not None
+        there = self._lossy[int(np.argmax(sign * values))].bounds.interval(measure)
+        if there is None:
+            return float(measure.limits[1] if sign > 0 else measure.limits[0])
+        return max(end, there.upper) if sign > 0 else min(end, there.lower)
+
+    def _losses(self, unread: Ints) -> list[Minimum]:
+        """Minima with the unread resistances held: at nothing, then rising while the readings allow it.
+
+        All rise together, and each rises alone.
+        """
+        lossless = self.problem.holding(unread)
+        theta = self.free.theta.copy()
+        theta[unread] = 0.0
+        starts = [theta, *(self._with(t, theta, unread) for t in self._flipped(theta))]
+        out = [self._made(lossless, starts)]
+        for rising in [unread, *(unread[[k]] for k in range(len(unread)))][: 1 if len(unread) == 1 else None]:
+            last = out[0]
+            for loss in _LOSSES:
+                theta = last.free.theta.copy()
+                theta[unread] = 0.0
+                theta[rising] = loss**2 * self.problem.unknowns.scale[rising]
+                still = np.setdiff1d(unread, rising)
+                last = self._made(with_loss(self.problem.holding(still), rising, loss), [theta])
+                if last.best.chi_square > out[0].best.chi_square + _ALLOWED:
+                    break
+                out.append(last)
+        return out
+
+    def _made(self, problem: Problem, starts: Sequence[Real]) -> Minimum:
+        free, best = self._least(problem, starts)
+        return Minimum(problem, free, best, self._region, self._coverage, self._least)
+
+    @staticmethod
+    def _with(theta: Real, values: Real, positions: Ints) -> Real:
+        out = theta.copy()
+        out[positions] = values[positions]
+        return out
+
+    def _flipped(self, theta: Real) -> list[Real]:
+        """The same unknowns with all couplings at half, as a second start."""
+        u = self.problem.unknowns
+        out = theta.copy()
+        off = np.tile(u.first != u.second, u.groups)
+        out[: len(off)][off] = 0.5 * u.scale[: len(off)][off]
+        return [out]
