@@ -84,7 +84,7 @@ def test_bird_7_from_the_readings_in_series_alone() -> None:
 
 
 @pytest.mark.parametrize("lossless", [False, True], ids=["no resistance read", "resistance read as nil"])
-@pytest.mark.parametrize("meter", [{"gain": "0.1 %"}], ids=["0.1 %"])
+@pytest.mark.parametrize("meter", [{}, {"gain": "0.1 %"}], ids=["no accuracy", "0.1 %"])
 def test_bird_7_with_k_as_shorted_inductances(lossless: bool, meter: dict[str, str]) -> None:
     """Ibid., ex. 7, k given as what it makes of the shorted windings, L (1 - k^2): 12.24 and 0.26 mH come out."""
     l1, l2 = bird_7()
@@ -140,7 +140,7 @@ IN_PARALLEL = [
 ]
 
 
-@pytest.mark.parametrize("lossless", [True], ids=["resistance read as nil"])
+@pytest.mark.parametrize("lossless", [False, True], ids=["no resistance read", "resistance read as nil"])
 @pytest.mark.parametrize("meter", [{}, {"gain": "0.1 %"}], ids=["no accuracy", "0.1 %"])
 @pytest.mark.parametrize(("printed", "m", "k"), IN_PARALLEL)
 def test_in_parallel(printed: Sequence[str], m: float, k: float, meter: dict[str, str], lossless: bool) -> None:
