@@ -4,15 +4,19 @@ from __future__ import annotations
 
 from collections.abc import Callable, Sequence
 from dataclasses import replace
+from functools import partial
 
 import numpy as np
 from numpy.typing import NDArray
+from scipy.special import ndtri
 
 from mutual.bounds import Bounds, Interval
 from mutual.engine import Fit, Problem
 from mutual.nuisance import with_loss
 from mutual.physics import Region
 from mutual.quantities import Measure
+from mutual.stated import LossAt, Waypoint
+from mutual.walking import FACTOR, Station, Walk, enclosed, turning
 
 Real = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -23,6 +27,7 @@ _ALLOWED = 4.0
 _LOSSES = (0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0)
 # A change below this part of a half width is none.
 _NOTABLE = 0.02
+_ON_THE_VALLEY = 0.1
 
 
 class Minimum:
@@ -44,6 +49,7 @@ class Minimum:
         self.bounds = Bounds(problem, free, best, region, coverage)
         self._region, self._coverage, self._least = region, coverage, least
         self._lossy: list[Minimum] | None = None
+        self._stations: list[Station] | None = None
 
     def interval(self, measure: Measure) -> tuple[Interval | None, str]:
         """Bounds of a quantity and which side they bound: "both", "lower" or "upper"."""
@@ -67,11 +73,7 @@ class Minimum:
         lossless = self._lossy[0]
         if lossless.best.chi_square > self.best.chi_square + _ALLOWED:
             # Some loss there must be: chi-square says how little and how much.
-            found = self.bounds.interval(measure)
-            side = "both"
-            if found is not None and found.at_lower != found.at_upper:
-                side = "lower" if found.at_upper else "upper"
-            return (found if found is None or side == "both" else replace(found, standard=None)), side
+            return self._over_walks(measure, unread)
         least = lossless.bounds.interval(measure)
         if least is None:
             return None, "both"
@@ -88,6 +90,37 @@ class Minimum:
         upper = self._farther(measure, values, least.upper, 1.0) if rise > notable else least.upper
         found, side, idle = replace(least, lower=floor, upper=upper, standard=None), "upper", upper
         return (None if idle >= measure.limits[1] else found), side
+
+    def _over_walks(self, measure: Measure, unread: Ints) -> tuple[Interval | None, str]:
+        """Bounds over all that the unread losses may be, each in turn held at one value after another."""
+        if self._stations is None:
+            self._stations = self._walked(unread)
+        scale = self.problem.unknowns.scale
+        held = [s for s in self._stations if s.valley >= 0]
+        # Against the border of physics a fit may lose hold of a quantity that the data determine on the valley.
+        if not held or not all(s.determines(measure, scale) for s in held if s.rise < _ON_THE_VALLEY):
+            return None, "both"
+        values = turning(self._stations, np.array([float(measure.size(s.fit.theta)) for s in self._stations]))[0]
+        left = [np.sqrt(self._quantile**2 - s.rise**2) * s.standard(measure, scale) for s in self._stations]
+        # Where nothing is held, what is held elsewhere is open: the best fit says where, not how well.
+        left = [0.0 if s.valley < 0 else x for s, x in zip(self._stations, left, strict=True)]
+        low, high = float(np.min(values - left)), float(np.max(values + left))
+        return enclosed(Interval(float(measure.size(self.best.theta)), low, high, None), measure)
+
+    @property
+    def _quantile(self) -> float:
+        return float(ndtri((1 + self._coverage) / 2))
+
+    def _walked(self, unread: Ints) -> list[Station]:
+        u, theta = self.problem.unknowns, self.best.theta
+        walk = Walk(self.problem, self.best, self._region, self._quantile)
+        out = [Station(self.best, 0.0)]
+        where = [(f, i) for f in range(len(u.omegas)) for i in range(u.windings) if u.resistance(f, i, i) in unread]
+        for valley, (state, i) in enumerate(where):
+            reactance = u.omegas[state] * float(theta[u.inductance(0, i, i)])
+            ratio = np.sqrt(max(float(theta[u.resistance(state, i, i)]), 0.0)) / reactance
+            out += walk.both_ways(valley, partial(_loss, state, i, max(ratio, _LOSSES[0])))[1:]
+        return out
 
     def _farther(self, measure: Measure, values: Real, end: float, sign: float) -> float:
         """An end of the bounds, moved out to that of the losses which carry a quantity farthest that way."""
@@ -137,3 +170,7 @@ class Minimum:
         off = np.tile(u.first != u.second, u.groups)
         out[: len(off)][off] = 0.5 * u.scale[: len(off)][off]
         return [out]
+
+
+def _loss(state: int, winding: int, ratio: float, place: float) -> Waypoint:
+    return LossAt([(state, winding)], ratio * FACTOR**place)

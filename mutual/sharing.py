@@ -13,11 +13,11 @@ from mutual.nuisance import Shared
 from mutual.physics import Region
 from mutual.posterior import Posterior
 from mutual.quantities import Measure
-from mutual.valleys import Station, Valleys, turning
+from mutual.valleys import Valleys
+from mutual.walking import Station, enclosed, turning
 
 # Less than this part of a standard uncertainty is not followed.
 _NOTABLE = 0.02
-_CLOSE = 0.02
 
 
 @dataclass(frozen=True)
@@ -61,7 +61,6 @@ class Sharing:
         here = float(np.sqrt(posterior.contributions(measure.gradient(best.theta)).variance))
         if not self._bears(best, posterior, region, measure, here or (found.upper - found.lower) / 4):
             return found, "both"
-        least, most = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0], measure.limits[1]
         low, high = found.lower, found.upper
         stations = self._stations(best, region, part)
         values = turning(stations, np.array([float(measure.size(s.fit.theta)) for s in stations]))[0]
@@ -70,13 +69,7 @@ class Sharing:
             wide = left * station.standard(measure, scale) / here if here > 0 else left
             low = min(low, value - wide * (found.value - found.lower))
             high = max(high, value + wide * (found.upper - found.value))
-        # What comes that close to a limit of physics is limited by nothing else.
-        at_least = low <= least + _CLOSE * (found.value - low)
-        at_most = high >= most - _CLOSE * (high - found.value)
-        wide_open = replace(found, lower=least if at_least else low, upper=most if at_most else high)
-        if at_least == at_most:
-            return wide_open, "both"
-        return replace(wide_open, standard=None), "lower" if at_most else "upper"
+        return enclosed(replace(found, lower=low, upper=high), measure)
 
     @property
     def _wanted(self) -> float:
