@@ -101,9 +101,11 @@ class Minimum:
         if not held or not all(s.determines(measure, scale) for s in held if s.rise < _ON_THE_VALLEY):
             return None, "both"
         values = turning(self._stations, np.array([float(measure.size(s.fit.theta)) for s in self._stations]))[0]
-        left = [np.sqrt(self._quantile**2 - s.rise**2) * s.standard(measure, scale) for s in self._stations]
-        # Where nothing is held, what is held elsewhere is open: the best fit says where, not how well.
-        left = [0.0 if s.valley < 0 else x for s, x in zip(self._stations, left, strict=True)]
+        # Where a quantity is open, a station says what it may be, not how well that is known.
+        left = [
+            np.sqrt(self._quantile**2 - s.rise**2) * s.standard(measure, scale) if s.determines(measure, scale) else 0.0
+            for s in self._stations
+        ]
         low, high = float(np.min(values - left)), float(np.max(values + left))
         return enclosed(Interval(float(measure.size(self.best.theta)), low, high, None), measure)
 

@@ -26,7 +26,7 @@ _WORTH_A_FIT = 0.3
 _PROMISING, _HARDLY_PROMISING = 0.01, 0.05
 # Once something was found, rows are left alone without which, by the linear model, this much of chi-square stays.
 _NO_GAIN = 0.9
-_MOVES_TRIED = 8
+_MOVES_TRIED, _MOST_MOVES = 8, 24
 # Below this part of chi-square, what the linear model sees of a contradiction is not what it is about.
 _TELLING = 0.5
 
@@ -152,12 +152,17 @@ class Search:
             for position in rows[2:-1]:
                 alternative = self.slips.moved_from(position, winding, shows)
                 found.append((merits[position], position, winding, alternative))
-        for merit, _, _, alternative in sorted(found, key=lambda f: f[:3])[:_MOVES_TRIED]:
-            if not self._worth_a_fit(merit) or alternative.moved is None:
+        good = False
+        for number, (merit, _, _, alternative) in enumerate(sorted(found, key=lambda f: f[:3])[:_MOST_MOVES]):
+            # Where closed loops bend the model, its order is rough: more are tried while none is good.
+            if alternative.moved is None or (number >= _MOVES_TRIED and good):
+                break
+            if number < _MOVES_TRIED and not self._worth_a_fit(merit) and self.joint.main.main.problem.body.linear:
                 break
             base = self.mending.solve(self.mending.changed(alternative), None, 2)
             mended = None if base is None else self.mending.with_moved(alternative.moved, base)
             if mended is not None and mended.good:
+                good = True
                 yield Candidate(alternative, mended)
 
 

@@ -1,6 +1,6 @@
 """How often 95 % bounds hold the truth, and how wide they are beside the linear (Cramer-Rao) ones.
 
-    python tests/benchmarks/coverage.py [--count 2000] [--seed 1]
+    python tests/benchmarks/coverage.py [--count 2000] [--seed 1] [--jobs 1]
 
 Devices, hookups and accuracies are random; circuit truth is that of tests/loops.py. Printed apart: normal errors
 far from physical limits (93.5 to 97.5 % is asked for); rectangular errors, truths within five standard
@@ -14,11 +14,15 @@ import argparse
 import sys
 import warnings
 from collections import defaultdict
+from collections.abc import Iterable
+from concurrent.futures import ProcessPoolExecutor
 from dataclasses import dataclass
+from functools import partial
 from pathlib import Path
 from typing import Any
 
 import numpy as np
+from scipy.stats import poisson
 
 sys.path.insert(0, str(Path(__file__).parent))
 from drawn import OMEGA, Bench, draw_sizes, draw_windings, hookups_of, recording
@@ -176,19 +180,38 @@ def judge(bench: Bench, estimate: Estimate, table: dict[Any, Tally], signs: dict
             signs["wrong"] += word not in (right, "undetermined")
 
 
-def run(count: int, seed: int) -> tuple[dict[Any, Tally], dict[str, int], int]:
-    """Draw, estimate and judge `count` recordings."""
-    rng = np.random.default_rng(seed)
+Found = tuple[dict[Any, Tally], dict[str, int], int]
+
+
+def run(numbers: Iterable[int], seed: int) -> Found:
+    """Draw, estimate and judge the recordings of these numbers."""
     table: dict[Any, Tally] = defaultdict(Tally)
     signs: dict[str, int] = defaultdict(int)
     inconsistent = 0
     with warnings.catch_warnings():
         warnings.simplefilter("error")
-        for _ in range(count):
+        for number in numbers:
+            rng = np.random.default_rng((seed, number))
             bench = draw(rng)
             estimate = mutual.estimate(recording(bench, rng), suspects=False)
             inconsistent += estimate.consistency.verdict == "inconsistent"
             judge(bench, estimate, table, signs)
+    return table, signs, inconsistent
+
+
+def together(parts: Iterable[Found]) -> Found:
+    """One table of several."""
+    table: dict[Any, Tally] = defaultdict(Tally)
+    signs: dict[str, int] = defaultdict(int)
+    inconsistent = 0
+    for some, counts, more in parts:
+        for key, tally in some.items():
+            mine = table[key]
+            mine.held, mine.total = mine.held + tally.held, mine.total + tally.total
+            mine.widths = [*(mine.widths or []), *(tally.widths or [])]
+        for word, number in counts.items():
+            signs[word] += number
+        inconsistent += more
     return table, signs, inconsistent
 
 
@@ -205,13 +228,37 @@ def report(table: dict[Any, Tally], signs: dict[str, int], inconsistent: int, co
     return "\n".join(lines)
 
 
+def missed(table: dict[Any, Tally], signs: dict[str, int]) -> list[str]:
+    """What falls short of what is asked for."""
+    out = []
+    for group in CLASSES:
+        for name in ("M", "k"):
+            t = table[group, name]
+            least, most = (0.935, 0.975) if group == CLASSES[0] else (0.92, 1.0)
+            if t.total and not least <= t.coverage <= most:
+                out.append(f"{group}, {name}: {t.coverage:.1%}")
+            if t.widths and np.median(t.widths) > 1.1:
+                out.append(f"{group}, {name}: {np.median(t.widths):.2f} times the linear width")
+    # Wrong by chance at 1000 to 1: more than this once in 1000 runs.
+    if signs["wrong"] > poisson.ppf(0.999, signs["given"] / 1000):
+        out.append(f"{signs['wrong']} verdicts wrong")
+    return out
+
+
 def main() -> None:
-    """Print the table."""
+    """Print the table; exit 1 where something that is asked for is missed."""
     parser = argparse.ArgumentParser()
     parser.add_argument("--count", type=int, default=2000)
     parser.add_argument("--seed", type=int, default=1)
+    parser.add_argument("--jobs", type=int, default=1)
     chosen = parser.parse_args()
-    print(report(*run(chosen.count, chosen.seed), chosen.count))
+    shares = [range(k, chosen.count, chosen.jobs) for k in range(chosen.jobs)]
+    with ProcessPoolExecutor(chosen.jobs) as pool:
+        table, signs, inconsistent = together(pool.map(partial(run, seed=chosen.seed), shares))
+    print(report(table, signs, inconsistent, chosen.count))
+    short = missed(table, signs)
+    if short:
+        sys.exit(f"missed: {'; '.join(short)}")
 
 
 if __name__ == "__main__":
