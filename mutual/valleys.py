@@ -26,6 +26,7 @@ Real = NDArray[np.float64]
 # Steps of the way to all that may be shared; rounds of fits where a coupling turns.
 _PARTS = (0.3, 0.65, 1.0)
 _ROUNDS = 2
+_LEAST = 1e-6
 
 
 class Valleys:
@@ -113,8 +114,9 @@ def anchored(problem: Problem, shared: Sequence[Shared], losses: Sequence[tuple[
 
 
 def _ratio(u: Unknowns, theta: Real, state: int, i: int) -> float:
-    """R/(omega L) of a winding."""
-    return float(theta[u.resistance(state, i, i)]) / (u.omegas[state] * float(theta[u.inductance(0, i, i)]))
+    """R/(omega L) of a winding, next to nothing where a fit puts it at nil or a trace below."""
+    ratio = float(theta[u.resistance(state, i, i)]) / (u.omegas[state] * float(theta[u.inductance(0, i, i)]))
+    return max(ratio, _LEAST)
 
 
 def shared_parts(problem: Problem, shared: Sequence[Shared], at: Fit) -> Real:
