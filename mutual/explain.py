@@ -28,6 +28,7 @@ Real = NDArray[np.float64]
 
 _AS_GOOD = 1e-6
 _BETTER = 1e-3
+_INSIDE = 1e-6
 
 
 class Explanation:
@@ -96,9 +97,13 @@ class Explanation:
         free = good[0]
         best = fit(problem, free.theta, self.region)
         for theta in thetas:
-            if best.chi_square <= free.chi_square + _AS_GOOD:
+            within = self.region.contains(best.theta, _INSIDE)
+            if within and best.chi_square <= free.chi_square + _AS_GOOD:
                 break
-            best = min(best, fit(problem, theta, self.region), key=lambda f: f.chi_square)
+            other = fit(problem, theta, self.region)
+            # A fit that ran out of steps outside of physics is the last resort.
+            if (not self.region.contains(other.theta, _INSIDE), other.chi_square) < (not within, best.chi_square):
+                best = other
         if best.chi_square <= free.chi_square + _AS_GOOD:
             # Where the data leave a direction open, a physical point may explain them as well as one that is not.
             return best, best

@@ -103,9 +103,10 @@ class LossAt(Waypoint):
         values = np.zeros(len(self._where))
         for v, (state, i) in enumerate(self._where):
             r, own = unknowns.resistance(state, i, i), unknowns.inductance(0, i, i)
-            reactance = unknowns.omegas[state] * float(theta[own])
+            size = float(theta[own]) or _LEAST * float(unknowns.scale[own])
+            reactance = unknowns.omegas[state] * size
             values[v] = float(theta[r]) / reactance**2
-            jacobian[v, [r, own]] = [1 / reactance**2, -2 * values[v] / float(theta[own])]
+            jacobian[v, [r, own]] = [1 / reactance**2, -2 * values[v] / size]
         return Prediction(values, jacobian, np.zeros((len(values), 0)))
 
 
