@@ -78,36 +78,50 @@ class Minimum:
         if least is None:
             return None, "both"
         values = np.array([float(measure.size(m.best.theta)) for m in self._lossy])
-        rise, fall = float(values.max() - values[0]), float(values[0] - values.min())
+        walked, left = self._on_walks(measure, unread)
+        rise = float(max(values.max(), walked.max()) - values[0])
+        fall = float(values[0] - min(values.min(), walked.min()))
         notable = _NOTABLE * (least.upper - least.lower) / 2
         if max(rise, fall) < notable:
             return least, "both"
         floor = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
         if rise >= fall:
-            lower = self._farther(measure, values, least.lower, -1.0) if fall > notable else least.lower
+            lower = least.lower
+            if fall > notable:
+                farthest = int(np.argmin(walked))
+                lower = min(self._farther(measure, values, lower, -1.0), float(walked[farthest] - left[farthest]))
             found, side, idle = replace(least, lower=lower, upper=measure.limits[1], standard=None), "lower", lower
             return (None if idle <= floor else found), side
-        upper = self._farther(measure, values, least.upper, 1.0) if rise > notable else least.upper
+        upper = least.upper
+        if rise > notable:
+            farthest = int(np.argmax(walked))
+            upper = max(self._farther(measure, values, upper, 1.0), float(walked[farthest] + left[farthest]))
         found, side, idle = replace(least, lower=floor, upper=upper, standard=None), "upper", upper
         return (None if idle >= measure.limits[1] else found), side
 
     def _over_walks(self, measure: Measure, unread: Ints) -> tuple[Interval | None, str]:
         """Bounds over all that the unread losses may be, each in turn held at one value after another."""
-        if self._stations is None:
-            self._stations = self._walked(unread)
+        values, left = self._on_walks(measure, unread)
         scale = self.problem.unknowns.scale
-        held = [s for s in self._stations if s.valley >= 0]
+        held = [s for s in self._stations or [] if s.valley >= 0]
         # Against the border of physics a fit may lose hold of a quantity that the data determine on the valley.
         if not held or not all(s.determines(measure, scale) for s in held if s.rise < _ON_THE_VALLEY):
             return None, "both"
+        low, high = float(np.min(values - left)), float(np.max(values + left))
+        return enclosed(Interval(float(measure.size(self.best.theta)), low, high, None), measure)
+
+    def _on_walks(self, measure: Measure, unread: Ints) -> tuple[Real, Real]:
+        """Values (s,) of a quantity at all stations, and how far its bounds reach from each."""
+        if self._stations is None:
+            self._stations = self._walked(unread)
+        scale = self.problem.unknowns.scale
         values = turning(self._stations, np.array([float(measure.size(s.fit.theta)) for s in self._stations]))[0]
         # Where a quantity is open, a station says what it may be, not how well that is known.
         left = [
             np.sqrt(self._quantile**2 - s.rise**2) * s.standard(measure, scale) if s.determines(measure, scale) else 0.0
             for s in self._stations
         ]
-        low, high = float(np.min(values - left)), float(np.max(values + left))
-        return enclosed(Interval(float(measure.size(self.best.theta)), low, high, None), measure)
+        return values, np.array(left)
 
     @property
     def _quantile(self) -> float:
