@@ -3,7 +3,9 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from dataclasses import replace
 from itertools import combinations
+from math import prod, sqrt
 
 from mutual.joint import Joint
 from mutual.polarity import Signs, pair_dots
@@ -56,7 +58,7 @@ def pair_results(joint: Joint, signs: Signs, group: int | None, state: int | Non
         u = joint.main.unknowns
         m = pair_measures(u, joint.names, group, i, j)
         coupling = joint.quantity(m.coupling)
-        magnitude = joint.quantity(m.mutual)
+        magnitude = _possible(joint, joint.quantity(m.mutual), group, i, j)
         shared = None
         if state is not None and not u.fixed[u.resistance(state, i, j)] and not joint.main.shared:
             shared = joint.quantity(mutual_resistance(u, joint.names, state, i, j))
@@ -74,6 +76,17 @@ def pair_results(joint: Joint, signs: Signs, group: int | None, state: int | Non
             )
         )
     return tuple(out)
+
+
+def _possible(joint: Joint, magnitude: Quantity | None, group: int, i: int, j: int) -> Quantity | None:
+    """|M| within sqrt(L1 L2): a bound over unread losses ends at the bounds of both inductances at the latest."""
+    if magnitude is None or magnitude.standard_uncertainty is not None or magnitude.upper is None:
+        return magnitude
+    ends = [joint.quantity(self_inductance(joint.main.unknowns, joint.names, group, k)) for k in (i, j)]
+    most = prod(q.upper for q in ends if q is not None and q.upper is not None)
+    if any(q is None or q.upper is None for q in ends) or magnitude.upper <= sqrt(most):
+        return magnitude
+    return replace(magnitude, upper=max(sqrt(most), magnitude.value))
 
 
 def _signed(

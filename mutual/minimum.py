@@ -28,6 +28,8 @@ _LOSSES = (0.03, 0.1, 0.3, 1.0, 3.0, 10.0, 30.0)
 # A change below this part of a half width is none.
 _NOTABLE = 0.02
 _ON_THE_VALLEY = 0.1
+# Far along a valley a straight line is no guide: bounds reach so many half widths of the lossless ones from there.
+_REACH = 1.5
 
 
 class Minimum:
@@ -89,13 +91,15 @@ class Minimum:
             lower = least.lower
             if fall > notable:
                 farthest = int(np.argmin(walked))
-                lower = min(self._farther(measure, values, lower, -1.0), float(walked[farthest] - left[farthest]))
+                reach = min(float(left[farthest]), _REACH * float(values[0] - least.lower))
+                lower = min(self._farther(measure, values, lower, -1.0), float(walked[farthest]) - reach)
             found, side, idle = replace(least, lower=lower, upper=measure.limits[1], standard=None), "lower", lower
             return (None if idle <= floor else found), side
         upper = least.upper
         if rise > notable:
             farthest = int(np.argmax(walked))
-            upper = max(self._farther(measure, values, upper, 1.0), float(walked[farthest] + left[farthest]))
+            reach = min(float(left[farthest]), _REACH * float(least.upper - values[0]))
+            upper = max(self._farther(measure, values, upper, 1.0), float(walked[farthest]) + reach)
         found, side, idle = replace(least, lower=floor, upper=upper, standard=None), "upper", upper
         return (None if idle >= measure.limits[1] else found), side
 
