@@ -97,8 +97,13 @@ class Search:
         if bases[0].p_value < IMPROBABLE / 10 and not self._promising(bases[0], effort):
             return
         best: dict[str, Candidate] = {}
+        alternatives = list(self.slips.of_row(position))
         for base in bases:
-            for alternative, worth in self.mending.near(base, position, list(self.slips.of_row(position))):
+            near = self.mending.near(base, position, alternatives)
+            if base is bases[0]:
+                # The other equivalent bends the model most: what is near in a straight line is no guide to it.
+                near += [(a, 1) for a in alternatives if self._turned(a, position) and a not in [n for n, _ in near]]
+            for alternative, worth in near:
                 for found in self._tried(alternative, base, worth):
                     old = best.get(alternative.text)
                     if old is None or found.score < old.score:
@@ -112,6 +117,11 @@ class Search:
             yield Candidate(moved, mended)
         if bases[0].good:
             yield Candidate(removal, bases[0])
+
+    def _turned(self, alternative: Alternative, position: int) -> bool:
+        """Whether a slip is about what the columns of a row are, not about its hookup or numbers."""
+        row = dict(alternative.rows)[position]
+        return row is not None and set(row.values) != set(self.items[position].row.values)
 
     def _promising(self, base: Mended, effort: int) -> bool:
         """Whether a fit without a row, though not good, is so much better that it may only have stopped too early."""
