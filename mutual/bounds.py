@@ -141,9 +141,7 @@ class Bounds:
     def _clipped(
         self, measure: Measure, value: float, lower: float, upper: float, standard: float, parts: Contributions
     ) -> Interval:
-        least, most = measure.limits
-        if measure.folded:
-            least = max(least, 0.0)
+        least, most = measure.range
         lower, upper = min(max(lower, least), value), max(min(upper, most), value)
         return Interval(value, lower, upper, standard, lower <= least, upper >= most, parts)
 
@@ -213,7 +211,7 @@ class Bounds:
 
     def _from_profile(self, measure: Measure, standard: float, parts: Contributions | None) -> Interval | None:
         value = self._value(measure)
-        least, most = measure.limits if not measure.folded else (0.0, measure.limits[1])
+        least, most = measure.range
         step = max(standard, 1e-9 * abs(value))
         upper = self._profile.crossing(measure, value, step, most)
         lower = self._profile.crossing(measure, value, -step, least)

@@ -11,14 +11,12 @@ from mutual.collect import Collected, collect
 from mutual.conformity import limits
 from mutual.errors import WrongUsage
 from mutual.headline import Headline, by_state, choose
-from mutual.joint import Joint, explain
+from mutual.joint import IMPROBABLE, Joint, explain
 from mutual.polarity import Marks, Signs, combine, marks
 from mutual.reasons import reasons
 from mutual.recording.model import Recording
 from mutual.redo import formulas
 from mutual.result import Consistency, Estimate, Finding
-
-IMPROBABLE = 1e-3
 
 
 def estimate(

@@ -23,6 +23,7 @@ from mutual.quantities import Measure
 from mutual.sharing import Sharing
 from mutual.start import make_start
 from mutual.valleys import anchored, open_losses
+from mutual.walking import idle
 
 Real = NDArray[np.float64]
 
@@ -142,7 +143,7 @@ class Explanation:
         if found is None or self._sharing is None:
             return found, side
         wide, side = self.over_shared(measure, found, None)
-        return (None, "both") if _idle(wide, side, measure) else (wide, side)
+        return (None, "both") if idle(wide, side, measure) else (wide, side)
 
     def _with_others(self, measure: Measure, found: Interval | None, side: str) -> tuple[Interval | None, str]:
         """Bounds that hold what other explanations say as well."""
@@ -159,16 +160,9 @@ class Explanation:
             lower, upper = min(found.lower, there.lower, value), max(found.upper, there.upper, value)
             found = replace(found, lower=lower, upper=upper, standard=None)
             side = side if side == other_side else next(s for s in ("lower", "upper") if s in (side, other_side))
-        return (None, "both") if found is not None and _idle(found, side, measure) else (found, side)
+        return (None, "both") if found is not None and idle(found, side, measure) else (found, side)
 
     def over_shared(self, measure: Measure, found: Interval, part: float | None) -> tuple[Interval, str]:
         """Widen bounds to what open mutual resistances may do, within their bounds or a part of sqrt(R1 R2)."""
         assert self._sharing is not None
         return self._sharing.widened(self.main.best, self.main.bounds.posterior, measure, found, part)
-
-
-def _idle(found: Interval, side: str, measure: Measure) -> bool:
-    """Whether bounds say no more than physics does."""
-    least = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
-    below, above = found.lower <= least, found.upper >= measure.limits[1]
-    return below and above if side == "both" else below if side == "lower" else above

@@ -11,12 +11,11 @@ from mutual.assemble import pair_results, winding_results
 from mutual.collect import Collected
 from mutual.device import Device
 from mutual.errors import WrongUsage
-from mutual.joint import Joint
+from mutual.joint import IMPROBABLE, Joint
 from mutual.polarity import Signs, pair_dots
 from mutual.result import Finding, PairResult, Polarity, StateResult, WindingResult
 from mutual.states import Point, point_key
 
-_IMPROBABLE = 1e-3
 _SAME_FREQUENCY = 1e-6
 
 
@@ -64,7 +63,7 @@ def choose(
     joint = explain(False)
     apart = explain(True) if len(seen) > 1 else None
     frequencies, points = {f for f, _ in seen}, {p for _, p in seen}
-    fits = any(e.p_value is None or e.p_value >= _IMPROBABLE for e in joint.explanations)
+    fits = any(e.p_value is None or e.p_value >= IMPROBABLE for e in joint.explanations)
     if apart is None or fits:
         one = next(iter(seen)) if len(seen) == 1 else None
         return Headline(

@@ -19,6 +19,9 @@ from mutual.quantities import Measure
 from mutual.result import Quantity
 from mutual.states import States, make_states
 
+# Readings less probable than this contradict one another.
+IMPROBABLE = 1e-3
+
 
 @dataclass
 class Joint:

@@ -8,11 +8,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from mutual.engine import Fit, Problem, fit
+from mutual.joint import IMPROBABLE
 
 Real = NDArray[np.float64]
 Ints = NDArray[np.int64]
 
-IMPROBABLE = 1e-3
 # Two fits differ where an inductance does by this part of its natural size.
 _SAME = 0.02
 

@@ -12,11 +12,11 @@ from scipy.special import ndtri
 
 from mutual.bounds import Bounds, Interval
 from mutual.engine import Fit, Problem
-from mutual.nuisance import with_loss
+from mutual.nuisance import places_of, with_loss
 from mutual.physics import Region
 from mutual.quantities import Measure
 from mutual.stated import LossAt, Waypoint
-from mutual.walking import FACTOR, Station, Walk, enclosed, turning
+from mutual.walking import FACTOR, Station, Walk, enclosed, idle, turning
 
 Real = NDArray[np.float64]
 Ints = NDArray[np.int64]
@@ -86,22 +86,14 @@ class Minimum:
         notable = _NOTABLE * (least.upper - least.lower) / 2
         if max(rise, fall) < notable:
             return least, "both"
-        floor = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0]
+        floor, most = measure.range
         if rise >= fall:
-            lower = least.lower
-            if fall > notable:
-                farthest = int(np.argmin(walked))
-                reach = min(float(left[farthest]), _REACH * float(values[0] - least.lower))
-                lower = min(self._farther(measure, values, lower, -1.0), float(walked[farthest]) - reach)
-            found, side, idle = replace(least, lower=lower, upper=measure.limits[1], standard=None), "lower", lower
-            return (None if idle <= floor else found), side
-        upper = least.upper
-        if rise > notable:
-            farthest = int(np.argmax(walked))
-            reach = min(float(left[farthest]), _REACH * float(least.upper - values[0]))
-            upper = max(self._farther(measure, values, upper, 1.0), float(walked[farthest]) + reach)
-        found, side, idle = replace(least, lower=floor, upper=upper, standard=None), "upper", upper
-        return (None if idle >= measure.limits[1] else found), side
+            lower = self._farther(measure, values, walked, left, least.lower, -1.0) if fall > notable else least.lower
+            found, side = replace(least, lower=lower, upper=most, standard=None), "lower"
+        else:
+            upper = self._farther(measure, values, walked, left, least.upper, 1.0) if rise > notable else least.upper
+            found, side = replace(least, lower=floor, upper=upper, standard=None), "upper"
+        return (None if idle(found, side, measure) else found), side
 
     def _over_walks(self, measure: Measure, unread: Ints) -> tuple[Interval | None, str]:
         """Bounds over all that the unread losses may be, each in turn held at one value after another."""
@@ -135,20 +127,26 @@ class Minimum:
         u, theta = self.problem.unknowns, self.best.theta
         walk = Walk(self.problem, self.best, self._region, self._quantile)
         out = [Station(self.best, 0.0)]
-        where = [(f, i) for f in range(len(u.omegas)) for i in range(u.windings) if u.resistance(f, i, i) in unread]
-        for valley, (state, i) in enumerate(where):
+        for valley, (state, i) in enumerate(places_of(u, unread)):
             reactance = u.omegas[state] * float(theta[u.inductance(0, i, i)])
             ratio = np.sqrt(max(float(theta[u.resistance(state, i, i)]), 0.0)) / reactance
             out += walk.both_ways(valley, partial(_loss, state, i, max(ratio, _LOSSES[0])))[1:]
         return out
 
-    def _farther(self, measure: Measure, values: Real, end: float, sign: float) -> float:
+    def _farther(
+        self, measure: Measure, values: Real, walked: Real, left: Real, end: float, sign: float
+    ) -> float:
         """An end of the bounds, moved out to that of the losses which carry a quantity farthest that way."""
         assert self._lossy is not None
         there = self._lossy[int(np.argmax(sign * values))].bounds.interval(measure)
         if there is None:
-            return float(measure.limits[1] if sign > 0 else measure.limits[0])
-        return max(end, there.upper) if sign > 0 else min(end, there.lower)
+            held = measure.limits[1] if sign > 0 else measure.limits[0]
+        else:
+            held = there.upper if sign > 0 else there.lower
+        farthest = int(np.argmax(sign * walked))
+        reach = min(float(left[farthest]), _REACH * abs(end - float(values[0])))
+        ends = (end, float(held), float(walked[farthest]) + sign * reach)
+        return max(ends) if sign > 0 else min(ends)
 
     def _losses(self, unread: Ints) -> list[Minimum]:
         """Minima with the unread resistances held: at nothing, then rising while the readings allow it.
@@ -158,8 +156,7 @@ class Minimum:
         lossless = self.problem.holding(unread)
         theta = self.free.theta.copy()
         theta[unread] = 0.0
-        starts = [theta, *(self._with(t, theta, unread) for t in self._flipped(theta))]
-        out = [self._made(lossless, starts)]
+        out = [self._made(lossless, [theta, self._half_coupled(theta)])]
         for rising in [unread, *(unread[[k]] for k in range(len(unread)))][: 1 if len(unread) == 1 else None]:
             last = out[0]
             for loss in _LOSSES:
@@ -177,19 +174,13 @@ class Minimum:
         free, best = self._least(problem, starts)
         return Minimum(problem, free, best, self._region, self._coverage, self._least)
 
-    @staticmethod
-    def _with(theta: Real, values: Real, positions: Ints) -> Real:
-        out = theta.copy()
-        out[positions] = values[positions]
-        return out
-
-    def _flipped(self, theta: Real) -> list[Real]:
+    def _half_coupled(self, theta: Real) -> Real:
         """The same unknowns with all couplings at half, as a second start."""
         u = self.problem.unknowns
         out = theta.copy()
         off = np.tile(u.first != u.second, u.groups)
         out[: len(off)][off] = 0.5 * u.scale[: len(off)][off]
-        return [out]
+        return out
 
 
 def _loss(state: int, winding: int, ratio: float, place: float) -> Waypoint:

@@ -14,13 +14,11 @@ import numpy as np
 from numpy.typing import NDArray
 
 from mutual.engine import Fit, Problem
-from mutual.evidence import Body, Evidence
+from mutual.evidence import Body
 from mutual.physics import Region
 from mutual.posterior import Posterior
-from mutual.stated import LossAt, SizesAbout
-
-Real = NDArray[np.float64]
-
+from mutual.stated import LossAt, SizesAbout, Stated
+from mutual.unknowns import Unknowns
 
 
 @dataclass(frozen=True)
@@ -66,6 +64,11 @@ def open_shared(problem: Problem, fit: Fit) -> list[tuple[int, int, int]]:
     return found
 
 
+def holding(problem: Problem, stated: Stated) -> Problem:
+    """The problem with a nuisance held."""
+    return Problem(Body((*problem.body.pieces, stated)), problem.unknowns, problem.held)
+
+
 def with_sizes(problem: Problem, fit: Fit) -> Problem:
     """The problem with the self-inductances that the data leave open about where they are in a fit."""
     u = problem.unknowns
@@ -74,8 +77,7 @@ def with_sizes(problem: Problem, fit: Fit) -> Problem:
     positions = np.array([p for p in every if not posterior.determined(np.eye(u.size)[p])], dtype=np.int64)
     if not positions.size:
         return problem
-    pieces: tuple[Evidence, ...] = (*problem.body.pieces, SizesAbout(positions, fit.theta, u.scale))
-    return Problem(Body(pieces), u, problem.held)
+    return holding(problem, SizesAbout(positions, fit.theta, u.scale))
 
 
 def bounded(problem: Problem, fit: Fit, where: tuple[int, int, int]) -> Shared:
@@ -99,7 +101,10 @@ def bounded(problem: Problem, fit: Fit, where: tuple[int, int, int]) -> Shared:
 
 def with_loss(problem: Problem, unread: NDArray[np.int64], ratio: float) -> Problem:
     """The problem with the unread resistances at a part of omega L."""
-    u = problem.unknowns
-    where = [(f, i) for f in range(len(u.omegas)) for i in range(u.windings) if u.resistance(f, i, i) in unread]
-    pieces: tuple[Evidence, ...] = (*problem.body.pieces, LossAt(where, ratio))
-    return Problem(Body(pieces), u, problem.held)
+    return holding(problem, LossAt(places_of(problem.unknowns, unread), ratio))
+
+
+def places_of(unknowns: Unknowns, positions: NDArray[np.int64]) -> list[tuple[int, int]]:
+    """(state, winding) of resistances given by their positions."""
+    every = [(f, i) for f in range(len(unknowns.omegas)) for i in range(unknowns.windings)]
+    return [(f, i) for f, i in every if unknowns.resistance(f, i, i) in positions]

@@ -50,6 +50,12 @@ class Measure:
             return own - m * m / other
         return m / own
 
+    @property
+    def range(self) -> tuple[float, float]:
+        """What physics allows for what people ask for: no magnitude is negative."""
+        least, most = self.limits
+        return (max(least, 0.0) if self.folded else least), most
+
     def size(self, theta: Real) -> Real:
         """What people ask for: the magnitude where that is all they ask for."""
         return np.abs(self.value(theta)) if self.folded else self.value(theta)

@@ -9,9 +9,9 @@ from itertools import combinations
 import numpy as np
 
 from mutual.collect import Collected
-from mutual.joint import Joint
+from mutual.joint import IMPROBABLE, Joint
 from mutual.leverage import Leverage
-from mutual.mended import IMPROBABLE, Mended
+from mutual.mended import Mended
 from mutual.mending import Mending
 from mutual.methods.alternatives import Alternative, Slips
 from mutual.methods.readings import Item
@@ -102,7 +102,8 @@ class Search:
             near = self.mending.near(base, position, alternatives)
             if base is bases[0]:
                 # The other equivalent bends the model most: what is near in a straight line is no guide to it.
-                near += [(a, 1) for a in alternatives if self._turned(a, position) and a not in [n for n, _ in near]]
+                tried = {alternative.text for alternative, _ in near}
+                near += [(a, 1) for a in alternatives if a.text not in tried and self._turned(a, position)]
             for alternative, worth in near:
                 for found in self._tried(alternative, base, worth):
                     old = best.get(alternative.text)

@@ -33,6 +33,15 @@ class Stated:
         self.straight = np.zeros(m, dtype=bool)
         self.closed = False
 
+    def predict(self, unknowns: Unknowns, theta: Real) -> Prediction:
+        """The nuisance.
+
+        Raises
+        ------
+        NotImplementedError
+        """
+        raise NotImplementedError
+
     def hints(self) -> Hints:
         """It has none.
 
@@ -48,15 +57,6 @@ class Waypoint(Stated):
 
     def placed(self, unknowns: Unknowns, theta: Real) -> Real:
         """Unknowns (P,) with the nuisance where it is to be.
-
-        Raises
-        ------
-        NotImplementedError
-        """
-        raise NotImplementedError
-
-    def predict(self, unknowns: Unknowns, theta: Real) -> Prediction:
-        """The nuisance.
 
         Raises
         ------

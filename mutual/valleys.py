@@ -13,13 +13,13 @@ import numpy as np
 from numpy.typing import NDArray
 
 from mutual.engine import Fit, Problem, fit
-from mutual.nuisance import Shared
+from mutual.nuisance import Shared, holding
 from mutual.physics import Region
 from mutual.posterior import Posterior
 from mutual.quantities import Measure
 from mutual.stated import ReadLossAt, SharedAt, Waypoint
 from mutual.unknowns import Unknowns
-from mutual.walking import FACTOR, Station, Walk, holding, turning
+from mutual.walking import FACTOR, Station, Walk, turning
 
 Real = NDArray[np.float64]
 

@@ -10,7 +10,7 @@ from numpy.typing import NDArray
 
 from mutual.bounds import Interval
 from mutual.engine import Fit, Problem, fit
-from mutual.evidence import Body
+from mutual.nuisance import holding
 from mutual.physics import Region
 from mutual.quantities import Measure
 from mutual.stated import Waypoint
@@ -125,13 +125,20 @@ class Walk:
 
 def enclosed(found: Interval, measure: Measure) -> tuple[Interval, str]:
     """Bounds within what physics allows, and which side the data bound."""
-    least, most = max(measure.limits[0], 0.0) if measure.folded else measure.limits[0], measure.limits[1]
+    least, most = measure.range
     low = found.lower <= least + _CLOSE * (found.value - found.lower)
     high = found.upper >= most - _CLOSE * (found.upper - found.value)
     out = replace(found, lower=least if low else found.lower, upper=most if high else found.upper)
     if low == high:
         return out, "both"
     return replace(out, standard=None), "lower" if high else "upper"
+
+
+def idle(found: Interval, side: str, measure: Measure) -> bool:
+    """Whether bounds say no more than physics does."""
+    least, most = measure.range
+    below, above = found.lower <= least, found.upper >= most
+    return below and above if side == "both" else below if side == "lower" else above
 
 
 def turning(stations: Sequence[Station], values: Real) -> tuple[Real, list[tuple[int, float]]]:
@@ -158,8 +165,3 @@ def turning(stations: Sequence[Station], values: Real) -> tuple[Real, list[tuple
             where = stations[k].place + float(np.clip(-slope / (2 * bend), a, b))
             turns.append((k, where))
     return out, turns
-
-
-def holding(problem: Problem, pinned: Waypoint) -> Problem:
-    """The problem with a nuisance held."""
-    return Problem(Body((*problem.body.pieces, pinned)), problem.unknowns, problem.held)

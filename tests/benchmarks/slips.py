@@ -30,8 +30,7 @@ from slipped import KINDS, Slipped, draw
 
 from mutual.collect import collect
 from mutual.device import Hookup
-from mutual.joint import explain
-from mutual.mended import IMPROBABLE
+from mutual.joint import IMPROBABLE, explain
 from mutual.methods.alternatives import Alternative
 from mutual.search import Candidate
 from mutual.slips import candidates
